@@ -2,4 +2,9 @@
 #![no_std]
 #![forbid(unsafe_code)]
 
+pub mod certificate;
 pub mod fixed;
+pub mod machine;
+pub mod propagate;
+pub mod simplex;
+pub mod target;

@@ -1,0 +1,142 @@
+//! Cutting the span of a variable in two, and choosing which.
+
+use super::cell::JointSpan;
+use super::{Network, Spans};
+use crate::fixed::{Direction, ONE};
+use crate::machine::Motion;
+
+/// What became of a node.
+pub enum Branch {
+    /// No cut is worth making: every span is tiny.
+    Narrow,
+    /// Nothing is left.
+    Closed,
+    /// One variable was cut; the parts that are not empty, already propagated.
+    Cut {
+        /// Which variable.
+        variable: usize,
+        /// The lower part, unless it is empty.
+        lower: Option<Spans>,
+        /// The upper part, unless it is empty.
+        upper: Option<Spans>,
+    },
+}
+
+/// Logarithm to base two in steps of a thirty-second, of a width in units.
+fn log2(width: u32) -> i32 {
+    let bits = 31 - (width | 1).leading_zeros() as i32;
+    let fraction = if bits >= 5 {
+        (width >> (bits - 5)) & 31
+    } else {
+        (width << (5 - bits)) & 31
+    };
+    bits * 32 + fraction as i32
+}
+
+impl JointSpan {
+    /// A measure of the width that grows with the angle or length: a quarter turn is 2^28.
+    pub fn size(&self, motion: Motion) -> u32 {
+        if motion == Motion::Slide {
+            return self.length.width() as u32;
+        }
+        if self.arc.full {
+            return 1 << 30;
+        }
+        self.arc.lo.sweep(self.arc.hi)
+    }
+
+    /// The two parts of the span.
+    pub fn halves(&self, motion: Motion) -> (JointSpan, JointSpan) {
+        match motion {
+            Motion::Slide => {
+                let middle = ((self.length.lo as i64 + self.length.hi as i64) >> 1) as i32;
+                let (mut lower, mut upper) = (*self, *self);
+                lower.length.hi = middle;
+                upper.length.lo = middle;
+                (lower, upper)
+            }
+            Motion::Turn => {
+                let (lower, upper) = self.arc.halves();
+                (JointSpan::of_arc(lower), JointSpan::of_arc(upper))
+            }
+        }
+    }
+}
+
+impl Direction {
+    /// The counter-clockwise way to another direction: a quarter turn is 2^28. Monotone in the
+    /// angle, not proportional; precise to about 2^-28 of a turn.
+    pub fn sweep(self, other: Direction) -> u32 {
+        let (mut x, mut y) = (self.dot(other), self.cross(other));
+        let mut quarters = 0;
+        while !(x > 0 && y >= 0) && quarters < 3 {
+            (x, y) = (y, -x);
+            quarters += 1;
+        }
+        let (x, y) = ((x >> 31).max(0), (y >> 31).max(0));
+        let part = (y << 28) / (x + y).max(1);
+        (quarters << 28) + (part.min(ONE as i64 >> 2) as u32)
+    }
+}
+
+impl Network<'_> {
+    /// The sum of the logarithms of the widths: how much of the joint space a node covers.
+    pub fn volume(&self, spans: &Spans) -> i32 {
+        spans
+            .iter()
+            .zip(self.chain.variables)
+            .map(|(span, variable)| log2(span.size(variable.motion)))
+            .sum()
+    }
+
+    /// Cuts a propagated node: tries the `candidates` widest variables and keeps the cut after
+    /// which least is left.
+    ///
+    /// Cost: two propagations per candidate.
+    pub fn branch(&mut self, spans: &Spans, candidates: usize) -> Branch {
+        let mut order: heapless::Vec<(u32, usize), { super::MOST_JOINTS }> = spans
+            .iter()
+            .zip(self.chain.variables)
+            .enumerate()
+            .map(|(v, (span, variable))| (span.size(variable.motion), v))
+            .collect();
+        order.sort_unstable_by(|a, b| b.0.cmp(&a.0).then(a.1.cmp(&b.1)));
+        let mut best: Option<(i32, Branch)> = None;
+        for &(size, variable) in order.iter().take(candidates) {
+            // Narrower than about 2^-26 of a turn, or of the reach, a cut tells nothing.
+            if size < 1 << 5 {
+                break;
+            }
+            let motion = self.chain.variables[variable].motion;
+            let (low, high) = spans[variable].halves(motion);
+            let mut part = |half: JointSpan| {
+                let mut part = spans.clone();
+                part[variable] = half;
+                self.propagate(&mut part)
+                    .ok()
+                    .map(|()| (self.volume(&part), part))
+            };
+            let (lower, upper) = (part(low), part(high));
+            let score = match (&lower, &upper) {
+                (None, None) => return Branch::Cut { variable, lower: None, upper: None },
+                (Some((v, _)), None) | (None, Some((v, _))) => *v,
+                (Some((a, _)), Some((b, _))) => {
+                    // The logarithm of the sum, roughly.
+                    let (a, b) = (*a.max(b), *a.min(b));
+                    a + (32 - (a - b)).max(0)
+                }
+            };
+            if best.as_ref().is_none_or(|(least, _)| score < *least) {
+                best = Some((
+                    score,
+                    Branch::Cut {
+                        variable,
+                        lower: lower.map(|l| l.1),
+                        upper: upper.map(|u| u.1),
+                    },
+                ));
+            }
+        }
+        best.map_or(Branch::Narrow, |(_, branch)| branch)
+    }
+}

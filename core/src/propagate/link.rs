@@ -1,0 +1,198 @@
+//! The rules of rigid links: between two joints, and from the tip back to the base.
+
+use super::cell::{Cell, Vector};
+use crate::fixed::{Empty, Interval, Product};
+use crate::machine::Placement;
+
+/// `transposed rotation * (vector - origin)`: into the frame of the placement.
+#[inline]
+fn into(placement: &Placement, vector: &Vector, point: bool) -> Vector {
+    let mut sum = [Product::ZERO; 3];
+    for k in 0..3 {
+        let (mut lo, mut hi) = (vector[k].lo as i64, vector[k].hi as i64);
+        if point {
+            lo -= placement.origin[k].hi as i64;
+            hi -= placement.origin[k].lo as i64;
+        }
+        for j in 0..3 {
+            let factor = placement.rotation[k][j] as i64;
+            if factor > 0 {
+                sum[j].lo += factor * lo;
+                sum[j].hi += factor * hi;
+            } else if factor < 0 {
+                sum[j].lo += factor * hi;
+                sum[j].hi += factor * lo;
+            }
+        }
+    }
+    sum.map(|s| s.round(placement.turn_slack))
+}
+
+/// `origin + rotation * vector`: out of the frame of the placement.
+#[inline]
+fn out_of(placement: &Placement, vector: &Vector, point: bool) -> Vector {
+    let mut result = [Interval::ZERO; 3];
+    for k in 0..3 {
+        let mut sum = Product::ZERO;
+        for j in 0..3 {
+            let factor = placement.rotation[k][j];
+            if factor != 0 {
+                sum = sum.plus(vector[j].scale(factor));
+            }
+        }
+        if point {
+            sum = sum.plus(placement.origin[k].widen());
+        }
+        result[k] = sum.round(placement.turn_slack);
+    }
+    result
+}
+
+/// Tightens the components of `own` by `2 * fixed . own = sum`, first and third only: frames are
+/// chosen so that the second component of `fixed` is almost zero.
+#[inline]
+fn meet_along(own: &mut Vector, fixed: &Vector, sum: Product) -> Result<bool, Empty> {
+    let mut changed = false;
+    let across = fixed[1].times(own[1]).double();
+    for (k, other) in [(0, 2), (2, 0)] {
+        let rest = sum.minus(across).minus(fixed[other].times(own[other]).double());
+        if let Some(value) = rest.over_twice(fixed[k]) {
+            changed |= own[k].meet(value)?;
+        }
+    }
+    Ok(changed)
+}
+
+/// The rule of a link between two joints: `previous.after = t + R next.before`.
+///
+/// Also the law of cosines: the squared distances seen from the two origins differ by a linear
+/// function of either vector. Returns whether (previous, next) changed.
+pub fn link(
+    previous: &mut Cell,
+    next: &mut Cell,
+    placement: &Placement,
+    point: bool,
+) -> Result<(bool, bool), Empty> {
+    let mut back = false;
+    let mut forward = false;
+    for (own, value) in next
+        .before
+        .iter_mut()
+        .zip(into(placement, &previous.after, point))
+    {
+        forward |= own.meet(value)?;
+    }
+    for (own, value) in previous
+        .after
+        .iter_mut()
+        .zip(out_of(placement, &next.before, point))
+    {
+        back |= own.meet(value)?;
+    }
+    if !point {
+        return Ok((back, forward));
+    }
+    let along_next = dot(&placement.back, &next.before).double();
+    let along_previous = dot(&placement.origin, &previous.after).double();
+    let square = placement.square;
+    back |= previous
+        .square_after
+        .meet(square.plus(next.square_before).plus(along_next))?;
+    forward |= next
+        .square_before
+        .meet(square.plus(previous.square_after).minus(along_previous))?;
+    let difference = previous.square_after.minus(next.square_before);
+    forward |= meet_along(&mut next.before, &placement.back, difference.minus(square))?;
+    back |= meet_along(
+        &mut previous.after,
+        &placement.origin,
+        difference.plus(square),
+    )?;
+    Ok((back, forward))
+}
+
+/// Bounds of the inner product.
+#[inline]
+pub fn dot(a: &Vector, b: &Vector) -> Product {
+    a[0].times(b[0])
+        .plus(a[1].times(b[1]))
+        .plus(a[2].times(b[2]))
+}
+
+/// The rule that closes the loop: `base = tip + sum_k axes[k] * local[k]`.
+///
+/// `axes` are the tip's axes in the base frame, `tip` its position there (`None` for a
+/// direction), `local` the feature in the tip's frame. Returns whether (base, local) changed.
+pub fn close(
+    base: &mut Cell,
+    local: &mut Cell,
+    axes: &[Vector; 3],
+    tip: Option<&Vector>,
+) -> Result<(bool, bool), Empty> {
+    let mut at_base = false;
+    let mut at_tip = false;
+    for j in 0..3 {
+        let mut sum = Product::ZERO;
+        for k in 0..3 {
+            sum = sum.plus(axes[k][j].times(local.before[k]));
+        }
+        if let Some(tip) = tip {
+            sum = sum.plus(tip[j].widen());
+        }
+        at_base |= base.after[j].meet(sum.round(0))?;
+    }
+    let relative = match tip {
+        Some(tip) => [0, 1, 2].map(|k| base.after[k].less(tip[k])),
+        None => base.after,
+    };
+    for k in 0..3 {
+        at_tip |= local.before[k].meet(dot(&axes[k], &relative).round(0))?;
+    }
+    Ok((at_base, at_tip))
+}
+
+/// The rule that closes the loop when the tip's orientation is free: the distance to the tip.
+pub fn close_at_distance(
+    base: &mut Cell,
+    local: &mut Cell,
+    tip: &Vector,
+) -> Result<(bool, bool), Empty> {
+    let mut at_base = false;
+    let reach = crate::fixed::root_up(local.square_before.hi);
+    for k in 0..3 {
+        at_base |= base.after[k].meet(Interval::clamped(
+            tip[k].lo as i64 - reach,
+            tip[k].hi as i64 + reach,
+        ))?;
+    }
+    let relative = [0, 1, 2].map(|k| base.after[k].less(tip[k]));
+    let square = relative[0]
+        .square()
+        .plus(relative[1].square())
+        .plus(relative[2].square());
+    let at_tip = local.square_before.meet(square)?;
+    Ok((at_base, at_tip))
+}
+
+/// The same when one tip axis is known: split into the part along the axis and the rest.
+pub fn close_about_axis(
+    base: &mut Cell,
+    local: &mut Cell,
+    tip: &Vector,
+    axis_in_tip: &Vector,
+    axis_in_base: &Vector,
+) -> Result<(bool, bool), Empty> {
+    let mut at_base = false;
+    let along = dot(axis_in_tip, &local.before).round(0);
+    let across = local.square_before.minus(along.square());
+    let reach = crate::fixed::root_up(across.hi);
+    for k in 0..3 {
+        let shift = along.times(axis_in_base[k]).round(0);
+        at_base |= base.after[k].meet(Interval::clamped(
+            tip[k].lo as i64 + shift.lo as i64 - reach,
+            tip[k].hi as i64 + shift.hi as i64 + reach,
+        ))?;
+    }
+    let (near, far) = close_at_distance(base, local, tip)?;
+    Ok((at_base | near, far))
+}
