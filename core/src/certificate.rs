@@ -41,21 +41,33 @@ pub struct Range {
 
 impl Range {
     /// Every value.
-    pub const FREE: Self = Self { lower: None, upper: None };
+    pub const FREE: Self = Self {
+        lower: None,
+        upper: None,
+    };
 
     /// Values not below `lower`.
     pub const fn at_least(lower: i64) -> Self {
-        Self { lower: Some(lower), upper: None }
+        Self {
+            lower: Some(lower),
+            upper: None,
+        }
     }
 
     /// Values not above `upper`.
     pub const fn at_most(upper: i64) -> Self {
-        Self { lower: None, upper: Some(upper) }
+        Self {
+            lower: None,
+            upper: Some(upper),
+        }
     }
 
     /// Values from `lower` to `upper`, both included.
     pub const fn between(lower: i64, upper: i64) -> Self {
-        Self { lower: Some(lower), upper: Some(upper) }
+        Self {
+            lower: Some(lower),
+            upper: Some(upper),
+        }
     }
 
     /// The one value `value`.
@@ -120,11 +132,17 @@ pub enum Unproved {
 impl core::fmt::Display for Unproved {
     fn fmt(&self, formatter: &mut core::fmt::Formatter<'_>) -> core::fmt::Result {
         match self {
-            Self::MissingSide => formatter.write_str("a multiplier uses a side its row does not have"),
-            Self::NotStrict { slack } => write!(formatter, "the combined row can be met, slack {slack}"),
+            Self::MissingSide => {
+                formatter.write_str("a multiplier uses a side its row does not have")
+            }
+            Self::NotStrict { slack } => {
+                write!(formatter, "the combined row can be met, slack {slack}")
+            }
             Self::Overflow => formatter.write_str("a sum does not fit its integer type"),
             Self::Unbounded => formatter.write_str("a left-over falls on an unbounded side"),
-            Self::UnknownOutOfRange => formatter.write_str("a row or box names an unknown that does not exist"),
+            Self::UnknownOutOfRange => {
+                formatter.write_str("a row or box names an unknown that does not exist")
+            }
         }
     }
 }
@@ -159,7 +177,10 @@ impl<'a> Combination<'a> {
     /// The empty sum `0 <= 0`. `left_overs` is working memory, one entry per unknown; it is cleared first.
     pub fn new(left_overs: &'a mut [i64]) -> Self {
         left_overs.fill(0);
-        Self { left_overs, right_side: 0 }
+        Self {
+            left_overs,
+            right_side: 0,
+        }
     }
 
     /// Adds `multiplier` times `row`: a positive multiplier uses the row's upper side, a negative one its
@@ -178,8 +199,10 @@ impl<'a> Combination<'a> {
         let side = side.ok_or(Unproved::MissingSide)?;
         self.right_side = add_product(self.right_side, i64::from(multiplier), side)?;
         for term in row.terms {
-            let left_over =
-                self.left_overs.get_mut(usize::from(term.unknown)).ok_or(Unproved::UnknownOutOfRange)?;
+            let left_over = self
+                .left_overs
+                .get_mut(usize::from(term.unknown))
+                .ok_or(Unproved::UnknownOutOfRange)?;
             *left_over = i64::from(multiplier)
                 .checked_mul(i64::from(term.coefficient))
                 .and_then(|product| left_over.checked_add(product))
@@ -207,8 +230,17 @@ impl<'a> Combination<'a> {
             };
             least = add_product(least, left_over, end.ok_or(Unproved::Unbounded)?)?;
         }
-        let slack = self.right_side.checked_sub(least).ok_or(Unproved::Overflow)?;
-        if slack < 0 { Ok(Refuted { _only_made_here: () }) } else { Err(Unproved::NotStrict { slack }) }
+        let slack = self
+            .right_side
+            .checked_sub(least)
+            .ok_or(Unproved::Overflow)?;
+        if slack < 0 {
+            Ok(Refuted {
+                _only_made_here: (),
+            })
+        } else {
+            Err(Unproved::NotStrict { slack })
+        }
     }
 }
 

@@ -234,9 +234,18 @@ impl Product {
         }
     }
 
-    /// Half the quotient by an interval that excludes zero by a margin.
+    /// Half the value, rounded outward.
     #[inline]
-    pub fn over_twice(self, divisor: Interval) -> Option<Interval> {
+    pub fn halve(self) -> Product {
+        Product {
+            lo: self.lo >> 1,
+            hi: -((-self.hi) >> 1),
+        }
+    }
+
+    /// Quotient by an interval, rounded outward; `None` unless that excludes zero by a margin.
+    #[inline]
+    pub fn over_interval(self, divisor: Interval) -> Option<Interval> {
         const LEAST: i32 = 1 << 10;
         let (low, high, lo, hi) = if divisor.lo >= LEAST {
             (divisor.lo, divisor.hi, self.lo, self.hi)
@@ -245,7 +254,7 @@ impl Product {
         } else {
             return None;
         };
-        let (low, high) = (2 * low as i64, 2 * high as i64);
+        let (low, high) = (low as i64, high as i64);
         Some(Interval::clamped(
             lo.div_euclid(if lo >= 0 { high } else { low }),
             -(-hi).div_euclid(if hi >= 0 { low } else { high }),
@@ -377,6 +386,12 @@ impl Direction {
             self.x as i64 * other.x as i64 - self.y as i64 * other.y as i64,
             self.x as i64 * other.y as i64 + self.y as i64 * other.x as i64,
         )
+    }
+
+    /// The sum of the two angles; the ray may move by 2^-28.5 radians.
+    #[inline]
+    pub fn turned(self, by: Direction) -> Direction {
+        Direction::shorten(self.product(by))
     }
 
     /// Shortens an exact pair to 30 bits. The ray moves by at most 2^-28.5 radians.

@@ -8,3 +8,5 @@ pub mod machine;
 pub mod propagate;
 pub mod simplex;
 pub mod target;
+pub mod relaxation;
+pub mod rows;

@@ -125,8 +125,14 @@ impl<const ROWS: usize, const COLUMNS: usize, F: Real> Simplex<ROWS, COLUMNS, F>
     /// No unknowns and no rows.
     pub const fn new() -> Self {
         const {
-            assert!(ROWS > 0 && COLUMNS > 0, "a simplex needs at least one row and one column");
-            assert!(ROWS + COLUMNS <= u16::MAX as usize, "rows and columns are numbered in 16 bits");
+            assert!(
+                ROWS > 0 && COLUMNS > 0,
+                "a simplex needs at least one row and one column"
+            );
+            assert!(
+                ROWS + COLUMNS <= u16::MAX as usize,
+                "rows and columns are numbered in 16 bits"
+            );
         }
         Self {
             entries: [[F::ZERO; COLUMNS]; ROWS],
@@ -152,7 +158,11 @@ impl<const ROWS: usize, const COLUMNS: usize, F: Real> Simplex<ROWS, COLUMNS, F>
         self.unknowns = 0;
         self.conflict = None;
         self.pivots = 0;
-        let columns = self.nonbasic.iter_mut().zip(&mut self.unknown_scales).zip(&mut self.places);
+        let columns = self
+            .nonbasic
+            .iter_mut()
+            .zip(&mut self.unknown_scales)
+            .zip(&mut self.places);
         let mut columns = (0u16..).zip(columns);
         for range in boxes {
             let Some((id, ((variable, scale), place))) = columns.next() else {
@@ -170,7 +180,9 @@ impl<const ROWS: usize, const COLUMNS: usize, F: Real> Simplex<ROWS, COLUMNS, F>
     pub fn set_box(&mut self, unknown: usize, range: Range) -> bool {
         self.conflict = None;
         let mut tableau = self.tableau();
-        let Some(scale) = tableau.unknown_scales.get(unknown).copied() else { return false };
+        let Some(scale) = tableau.unknown_scales.get(unknown).copied() else {
+            return false;
+        };
         tableau.set_range(unknown, range, F::ONE / scale);
         true
     }
@@ -186,7 +198,11 @@ impl<const ROWS: usize, const COLUMNS: usize, F: Real> Simplex<ROWS, COLUMNS, F>
         if self.rows == ROWS {
             return Err(RowRejected::Full);
         }
-        if row.terms.iter().any(|term| usize::from(term.unknown) >= self.unknowns) {
+        if row
+            .terms
+            .iter()
+            .any(|term| usize::from(term.unknown) >= self.unknowns)
+        {
             return Err(RowRejected::UnknownOutOfRange);
         }
         self.rows += 1;
@@ -235,7 +251,13 @@ impl<const ROWS: usize, const COLUMNS: usize, F: Real> Simplex<ROWS, COLUMNS, F>
         let unknowns = self.unknowns;
         let sign = if below { F::ONE } else { -F::ONE };
         let own = self.basic.get(row).map(|variable| (variable.id, -sign));
-        let others = self.entries.get(row).into_iter().flatten().zip(&self.nonbasic).take(unknowns);
+        let others = self
+            .entries
+            .get(row)
+            .into_iter()
+            .flatten()
+            .zip(&self.nonbasic)
+            .take(unknowns);
         others
             .map(move |(&entry, variable)| (variable, sign * entry))
             // What has an open side on the way is rounding noise, or there would be no conflict.
@@ -257,7 +279,9 @@ impl<const ROWS: usize, const COLUMNS: usize, F: Real> Simplex<ROWS, COLUMNS, F>
     /// similar size. Entries of `multipliers` beyond the rows are set to 0.
     pub fn multipliers(&self, multipliers: &mut [i32]) {
         multipliers.fill(0);
-        let sum = self.conflict().fold(F::ZERO, |sum, (_, multiplier)| sum + multiplier.magnitude());
+        let sum = self
+            .conflict()
+            .fold(F::ZERO, |sum, (_, multiplier)| sum + multiplier.magnitude());
         let scale = F::from_i64(1 << 29) / sum.power_of_two();
         for (row, multiplier) in self.conflict() {
             if let Some(place) = multipliers.get_mut(row) {
@@ -283,9 +307,11 @@ impl<const ROWS: usize, const COLUMNS: usize, F: Real> Simplex<ROWS, COLUMNS, F>
 /// Power of two of the size of a range: of its end furthest from 0, or 1 if it has an open side.
 fn size<F: Real>(range: Range) -> F {
     match (range.lower, range.upper) {
-        (Some(lower), Some(upper)) => {
-            F::from_i64(lower).magnitude().larger(F::from_i64(upper).magnitude()).larger(F::ONE).power_of_two()
-        }
+        (Some(lower), Some(upper)) => F::from_i64(lower)
+            .magnitude()
+            .larger(F::from_i64(upper).magnitude())
+            .larger(F::ONE)
+            .power_of_two(),
         _ => F::ONE,
     }
 }

@@ -4,7 +4,7 @@
 use std::f64::consts::TAU;
 
 /// Lines of the file.
-const COUNT: u64 = 200;
+pub const COUNT: u64 = 200;
 
 fn main() {
     (0..COUNT).for_each(|k| println!("{}", line(k)));
@@ -12,13 +12,19 @@ fn main() {
 
 /// Target `k`: a fruit somewhere around the arm, to be gripped from the side with some slack.
 /// Every fourth may be gripped with any roll about the approach, every tenth from anywhere.
-fn line(k: u64) -> String {
+pub fn line(k: u64) -> String {
     let mut random = Random(k);
     let side = TAU * random.next();
     let distance = 0.3 + 1.5 * random.next();
-    let [x, y, z] = [distance * side.cos(), distance * side.sin(), 0.1 + 1.9 * random.next()];
-    let place =
-        format!(r#""id":"fruit-{:03}","xyz":[{x:.4},{y:.4},{z:.4}],"xyz_within":0.004"#, k + 1);
+    let [x, y, z] = [
+        distance * side.cos(),
+        distance * side.sin(),
+        0.1 + 1.9 * random.next(),
+    ];
+    let place = format!(
+        r#""id":"fruit-{:03}","xyz":[{x:.4},{y:.4},{z:.4}],"xyz_within":0.004"#,
+        k + 1
+    );
     // Outwards from the cart, up to 0.6 radians to the left or right and up or down.
     let bearing = side + 1.2 * (random.next() - 0.5);
     let rise = 1.2 * (random.next() - 0.5);
@@ -35,8 +41,12 @@ fn line(k: u64) -> String {
     // Rz(bearing) Ry(90 degrees - rise) takes the gripper's z axis to the approach direction.
     let (sin_yaw, cos_yaw) = (bearing / 2.0).sin_cos();
     let (sin_pitch, cos_pitch) = (TAU / 8.0 - rise / 2.0).sin_cos();
-    let [w, x, y, z] =
-        [cos_yaw * cos_pitch, -sin_yaw * sin_pitch, cos_yaw * sin_pitch, sin_yaw * cos_pitch];
+    let [w, x, y, z] = [
+        cos_yaw * cos_pitch,
+        -sin_yaw * sin_pitch,
+        cos_yaw * sin_pitch,
+        sin_yaw * cos_pitch,
+    ];
     format!(r#"{{{place},"quat":[{w:.6},{x:.6},{y:.6},{z:.6}],"turn_within_deg":5}}"#)
 }
 

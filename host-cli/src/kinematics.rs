@@ -36,7 +36,9 @@ pub fn joint_frames(machine: &Machine, values: &[f64]) -> Vec<Isometry3<f64>> {
     let values = joint_values(machine, values);
     let mut frames: Vec<Isometry3<f64>> = Vec::with_capacity(machine.joints.len());
     for (joint, value) in machine.joints.iter().zip(values) {
-        let parent = joint.parent.map_or_else(Isometry3::identity, |parent| frames[parent]);
+        let parent = joint
+            .parent
+            .map_or_else(Isometry3::identity, |parent| frames[parent]);
         frames.push(parent * joint.placement * motion(joint, value));
     }
     frames
@@ -49,7 +51,9 @@ pub fn joint_frames(machine: &Machine, values: &[f64]) -> Vec<Isometry3<f64>> {
 ///
 /// When `values` is shorter than the machine's joints.
 pub fn joint_values(machine: &Machine, values: &[f64]) -> Vec<f64> {
-    (0..machine.joints.len()).map(|joint| joint_value(machine, values, joint)).collect()
+    (0..machine.joints.len())
+        .map(|joint| joint_value(machine, values, joint))
+        .collect()
 }
 
 fn joint_value(machine: &Machine, values: &[f64], joint: usize) -> f64 {
@@ -96,7 +100,11 @@ pub fn meets(machine: &Machine, target: &Target, values: &[f64], allowance: f64)
 pub fn within_limits(machine: &Machine, values: &[f64], allowance: f64) -> bool {
     let values = joint_values(machine, values);
     machine.joints.iter().zip(values).all(|(joint, value)| {
-        let spare = if joint.follows.is_some() { allowance } else { 0.0 };
+        let spare = if joint.follows.is_some() {
+            allowance
+        } else {
+            0.0
+        };
         match joint.limits {
             _ if joint.kind == Kind::Fixed => true,
             None => value.is_finite(),

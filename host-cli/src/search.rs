@@ -5,6 +5,7 @@ use crate::pack::{Pack, PackError, pack, pack_target};
 use crate::posture::Linkage;
 use balk_core::propagate::cell::{Cell, JointSpan};
 use balk_core::propagate::{Branch, Chain, Goal, Network, Rules, Spans};
+use balk_core::relaxation::NodeSimplex;
 use std::f64::consts::TAU;
 
 /// Answers questions about one tip of one machine.
@@ -16,6 +17,8 @@ pub struct Solver {
     linkage: Linkage,
     /// Rules in use.
     pub rules: Rules,
+    /// Pivots of the simplex at a node.
+    pub pivots: u32,
     /// Cuts tried at each node.
     pub candidates: usize,
 }
@@ -65,6 +68,7 @@ impl Solver {
             pack,
             linkage,
             rules: Rules::ALL,
+            pivots: 60,
             candidates: 3,
         })
     }
@@ -150,7 +154,17 @@ impl Solver {
         if network.propagate(&mut root).is_ok() {
             open.push((network.volume(&root), root));
         }
-        while let Some((_, spans)) = open.pop() {
+        let mut simplex = NodeSimplex::new();
+        while let Some((_, mut spans)) = open.pop() {
+            if network.propagate(&mut spans).is_err() {
+                continue;
+            }
+            if self.pivots > 0
+                && balk_core::relaxation::refute(&network, &spans, &mut simplex, self.pivots)
+                    .is_some()
+            {
+                continue;
+            }
             if let Some(joints) = self.try_posture(target, &spans) {
                 verdict = Verdict::Reachable { joints };
                 break;
@@ -162,6 +176,14 @@ impl Solver {
             match network.branch(&spans, self.candidates) {
                 Branch::Closed => {}
                 Branch::Narrow => {
+                    if std::env::var("SHOW").is_ok() {
+                        let mut v = self.middle(&spans);
+                        println!("mid {v:?}");
+                        let r = self.linkage.seek(target, &mut v);
+                        println!("res {r} {v:?} count {count} widths {:?}", spans.iter().map(|s| s.size(balk_core::machine::Motion::Turn)).collect::<Vec<_>>());
+                        let j = crate::kinematics::tip_pose(&self.machine, &v, 0);
+                        println!("pos {} turn {}", crate::kinematics::position_excess(target, &j), crate::kinematics::turn_excess(target, &j));
+                    }
                     verdict = Verdict::Undecided { reason: "too narrow" };
                     break;
                 }

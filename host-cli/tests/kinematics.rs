@@ -19,7 +19,11 @@ fn flange(machine: &Machine, values: &[f64]) -> Isometry3<f64> {
 
 fn assert_origin(pose: &Isometry3<f64>, expected: [f64; 3], within: f64) {
     let miss = (pose.translation.vector - Vector3::from(expected)).amax();
-    assert!(miss <= within, "origin {:?}, expected {expected:?}", pose.translation.vector);
+    assert!(
+        miss <= within,
+        "origin {:?}, expected {expected:?}",
+        pose.translation.vector
+    );
 }
 
 fn assert_rotation(pose: &Isometry3<f64>, rows: [f64; 9], within: f64) {
@@ -30,7 +34,9 @@ fn assert_rotation(pose: &Isometry3<f64>, rows: [f64; 9], within: f64) {
 
 /// A small deterministic spread of joint values in degrees; sizes do not matter.
 fn spread(joints: usize, sample: usize) -> Vec<f64> {
-    (0..joints).map(|k| (((sample * 7919 + k * 104_729) % 3600) as f64 * 0.1 - 180.0).to_radians()).collect()
+    (0..joints)
+        .map(|k| (((sample * 7919 + k * 104_729) % 3600) as f64 * 0.1 - 180.0).to_radians())
+        .collect()
 }
 
 /// The textbook six-joint arm in the standard convention, lengths in metres: Fu, Gonzalez & Lee,
@@ -91,8 +97,15 @@ fn a_tip_on_a_table_sits_on_the_frame_after_its_row() {
 
 #[test]
 fn textbook_arm_at_the_published_pose() {
-    let pose = flange(&machine(TEXTBOOK_STANDARD), &degrees([90.0, 0.0, 90.0, 0.0, 0.0, 0.0]));
-    assert_rotation(&pose, [0.0, -1.0, 0.0, 0.0, 0.0, 1.0, -1.0, 0.0, 0.0], 1e-14);
+    let pose = flange(
+        &machine(TEXTBOOK_STANDARD),
+        &degrees([90.0, 0.0, 90.0, 0.0, 0.0, 0.0]),
+    );
+    assert_rotation(
+        &pose,
+        [0.0, -1.0, 0.0, 0.0, 0.0, 1.0, -1.0, 0.0, 0.0],
+        1e-14,
+    );
     assert_origin(&pose, [-0.14909, 0.92112, 0.02032], 1e-14);
 }
 
@@ -104,11 +117,22 @@ fn textbook_arm_at_recomputed_poses() {
     assert_origin(&zero, [0.41148, 0.14909, 0.48932], 1e-14);
     let pose = flange(&arm, &degrees([10.0, 20.0, 30.0, 40.0, 50.0, 60.0]));
     let rows = [
-        -0.636562136, 0.022715838, 0.770890808, 0.771180006, 0.029595573, 0.635928849,
-        -0.008369299, 0.999303804, -0.036357421,
+        -0.636562136,
+        0.022715838,
+        0.770890808,
+        0.771180006,
+        0.029595573,
+        0.635928849,
+        -0.008369299,
+        0.999303804,
+        -0.036357421,
     ];
     assert_rotation(&pose, rows, 1e-9);
-    assert_origin(&pose, [0.730916094009, 0.308395181574, 0.144208650382], 1e-12);
+    assert_origin(
+        &pose,
+        [0.730916094009, 0.308395181574, 0.144208650382],
+        1e-12,
+    );
 }
 
 /// Craig, *Introduction to Robotics: Mechanics and Control*, Fig. 3.21 and eqs 3.14 (table and
@@ -138,8 +162,11 @@ fn textbook_arm_in_the_modified_convention() {
         let (s2, c2) = values[1].sin_cos();
         let (s23, c23) = (values[1] + values[2]).sin_cos();
         let radius = a2 * c2 + a3 * c23 - d4 * s23;
-        let expected =
-            [c1 * radius - d3 * s1, s1 * radius + d3 * c1, -a3 * s23 - a2 * s2 - d4 * c23];
+        let expected = [
+            c1 * radius - d3 * s1,
+            s1 * radius + d3 * c1,
+            -a3 * s23 - a2 * s2 - d4 * c23,
+        ];
         assert_origin(&flange(&arm, &values), expected, 1e-14);
     }
 }
@@ -160,10 +187,18 @@ fn horizontal_arm_with_a_prismatic_joint() {
         ]"#,
     );
     let zero = flange(&arm, &[0.0; 4]);
-    assert_rotation(&zero, [1.0, 0.0, 0.0, 0.0, -1.0, 0.0, 0.0, 0.0, -1.0], 1e-14);
+    assert_rotation(
+        &zero,
+        [1.0, 0.0, 0.0, 0.0, -1.0, 0.0, 0.0, 0.0, -1.0],
+        1e-14,
+    );
     assert_origin(&zero, [0.8, 0.0, 0.677], 1e-14);
     let [a, b, d] = degrees([30.0, -60.0, 45.0]);
-    assert_origin(&flange(&arm, &[a, b, 0.1, d]), [0.368060797, 0.5875, 0.577], 1e-9);
+    assert_origin(
+        &flange(&arm, &[a, b, 0.1, d]),
+        [0.368060797, 0.5875, 0.577],
+        1e-9,
+    );
 }
 
 /// Craig, MATLAB exercises of chapters 3 and 4 (from memory, recomputed).
@@ -219,14 +254,19 @@ fn turns_about_slanted_axes() {
 #[test]
 fn roll_pitch_yaw_is_about_fixed_axes_in_that_order() {
     let turned = |rpy: &str| {
-        let text = format!(
-            "[[joint]]\nname = \"a\"\nkind = \"fixed\"\n{rpy}\n[[tip]]\nname = \"end\"\n"
-        );
+        let text =
+            format!("[[joint]]\nname = \"a\"\nkind = \"fixed\"\n{rpy}\n[[tip]]\nname = \"end\"\n");
         flange(&machine(&text), &[0.0])
     };
     let rows = [
-        0.936293363584199, -0.275095847318244, 0.218350663146334, 0.289629477625516,
-        0.956425085849232, -0.036957013524625, -0.198669330795061, 0.097843395007256,
+        0.936293363584199,
+        -0.275095847318244,
+        0.218350663146334,
+        0.289629477625516,
+        0.956425085849232,
+        -0.036957013524625,
+        -0.198669330795061,
+        0.097843395007256,
         0.975170327201816,
     ];
     assert_rotation(&turned("rpy = [0.1, 0.2, 0.3]"), rows, 1e-14);
@@ -260,11 +300,18 @@ fn joints_may_stand_before_their_parents_and_followers_before_their_leaders() {
     let names: Vec<&str> = arm.joints.iter().map(|joint| joint.name.as_str()).collect();
     assert_eq!(names, ["arm", "hand"]);
     // arm 90, hand 45 - 45 = 0: straight along y. What is said of the follower does not matter.
-    assert_origin(&flange(&arm, &[90f64.to_radians(), 3.0]), [0.0, 2.0, 0.0], 1e-14);
+    assert_origin(
+        &flange(&arm, &[90f64.to_radians(), 3.0]),
+        [0.0, 2.0, 0.0],
+        1e-14,
+    );
 }
 
 fn target(machine: &Machine, text: &str) -> Target {
-    let line = read::Line { number: 1, bytes: Some(text.as_bytes().to_vec()) };
+    let line = read::Line {
+        number: 1,
+        bytes: Some(text.as_bytes().to_vec()),
+    };
     read::target(&line, "test.jsonl", machine).unwrap()
 }
 
@@ -293,7 +340,10 @@ fn the_box_is_kept_along_each_axis() {
 fn small_turns_are_told_apart() {
     // The cosine of 1e-8 is 1 in double precision, so the trace alone would see no turn at all.
     let arm = machine(ONE_JOINT);
-    let turned = target(&arm, r#"{"xyz":[1,0,0],"xyz_within":1,"quat":[1,0,0,0],"turn_within":1e-8}"#);
+    let turned = target(
+        &arm,
+        r#"{"xyz":[1,0,0],"xyz_within":1,"quat":[1,0,0,0],"turn_within":1e-8}"#,
+    );
     assert!(meets(&arm, &turned, &[0.99e-8], 0.0));
     assert!(!meets(&arm, &turned, &[1.01e-8], 0.0));
 }

@@ -168,6 +168,10 @@ cases! { SOUND;
          in degrees";
     ratio_not_finite: "ratio = -1.0" => "ratio = nan",
         "m.toml:15: joint[2].follows.ratio: NaN is not a finite number";
+    ratio_too_large: "ratio = -1.0" => "ratio = -1e7",
+        "m.toml:15: joint[2].follows.ratio: -10000000 is beyond 1000000 times";
+    huge_tolerance: "xyz = 0.001" => "xyz = 1e300",
+        &format!("m.toml:6: joint[0].tolerance.xyz: {} is beyond 1000000 metres", 1e300);
     tip_on_nothing: "parent = \"hand\"" => "parent = \"wrist\"",
         "m.toml:18: tip[0].parent: no joint is named \"wrist\"";
     tip_without_a_name: "name = \"end\"\n" => "", "m.toml:16: tip[0].name: missing";
@@ -212,19 +216,42 @@ cases! { SOUND_TABLE;
 
 #[test]
 fn empty_file() {
-    assert_told("empty", "", "m.toml: describes no machine: neither [[joint]] nor [dh]");
+    assert_told(
+        "empty",
+        "",
+        "m.toml: describes no machine: neither [[joint]] nor [dh]",
+    );
+}
+
+#[test]
+fn standard_input() {
+    let folder = Folder::new("machine_stdin").with("t.jsonl", TARGET);
+    let run = folder.run_with(&["screen", "-", "t.jsonl"], "\nname = 1");
+    assert_eq!(
+        run.err,
+        "<stdin>:2: name: expected a text, found a number\n"
+    );
+    assert_eq!((run.status, run.out.as_str()), (4, ""));
 }
 
 #[test]
 fn binary_file() {
     let bytes: Vec<u8> = (0..=255).cycle().take(4096).collect();
     assert_told("binary", bytes, "m.toml:2: not a text file (invalid UTF-8)");
-    assert_told("zeros", [0; 64], "m.toml:1: key with no value, expected `=`");
+    assert_told(
+        "zeros",
+        [0; 64],
+        "m.toml:1: key with no value, expected `=`",
+    );
 }
 
 #[test]
 fn endless_file() {
-    assert_told("long", vec![b'\n'; 2 << 20], "m.toml: longer than 1048576 bytes");
+    assert_told(
+        "long",
+        vec![b'\n'; 2 << 20],
+        "m.toml: longer than 1048576 bytes",
+    );
 }
 
 #[test]
@@ -235,7 +262,11 @@ fn no_tip() {
 
 #[test]
 fn no_joints() {
-    assert_told("no_joints", "joint = []\n[[tip]]\nname = \"end\"", "m.toml:1: joint: has no joints");
+    assert_told(
+        "no_joints",
+        "joint = []\n[[tip]]\nname = \"end\"",
+        "m.toml:1: joint: has no joints",
+    );
     assert_told(
         "no_rows",
         "[dh]\nconvention = \"standard\"\nangles = \"degrees\"\nrows = []",
@@ -245,10 +276,15 @@ fn no_joints() {
 
 #[test]
 fn too_many_joints() {
-    let joints: String =
-        (0..65).map(|k| format!("[[joint]]\nname = \"j{k}\"\nkind = \"revolute\"\n")).collect();
+    let joints: String = (0..65)
+        .map(|k| format!("[[joint]]\nname = \"j{k}\"\nkind = \"revolute\"\n"))
+        .collect();
     let text = format!("{joints}[[tip]]\nname = \"end\"");
-    assert_told("too_many", text, "m.toml:1: joint: has 65 joints, more than 64");
+    assert_told(
+        "too_many",
+        text,
+        "m.toml:1: joint: has 65 joints, more than 64",
+    );
 }
 
 #[test]

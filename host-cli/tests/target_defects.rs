@@ -24,26 +24,45 @@ fn assert_told(name: &str, text: impl AsRef<[u8]>, id: &str, field: &str, reason
     let folder = Folder::new(&format!("target_{name}"));
     let folder = folder.with("m.toml", MACHINE).with("t.jsonl", lines);
     let run = folder.run(&["decide", "m.toml", "t.jsonl", "--json"]);
-    let path = if field.is_empty() { String::new() } else { format!("{field}: ") };
+    let path = if field.is_empty() {
+        String::new()
+    } else {
+        format!("{field}: ")
+    };
     assert_eq!(run.err, format!("t.jsonl:2: {path}{reason}\n"), "{name}");
     assert_eq!(run.status, 4, "{name}");
-    let rows: Vec<Value> = run.out.lines().map(|row| serde_json::from_str(row).unwrap()).collect();
-    let verdicts: Vec<&str> = rows.iter().map(|row| row["verdict"].as_str().unwrap()).collect();
+    let rows: Vec<Value> = run
+        .out
+        .lines()
+        .map(|row| serde_json::from_str(row).unwrap())
+        .collect();
+    let verdicts: Vec<&str> = rows
+        .iter()
+        .map(|row| row["verdict"].as_str().unwrap())
+        .collect();
     assert_eq!(verdicts, ["reachable", "error", "reachable"], "{name}");
     let row = &rows[1];
     assert_eq!(row["schema"], 1, "{name}");
-    assert_eq!((row["id"].as_str(), row["line"].as_u64()), (Some(id), Some(2)), "{name}");
+    assert_eq!(
+        (row["id"].as_str(), row["line"].as_u64()),
+        (Some(id), Some(2)),
+        "{name}"
+    );
     assert_eq!(row["field"].as_str().unwrap_or_default(), field, "{name}");
-    assert_eq!((row["file"].as_str(), row["reason"].as_str()), (Some("t.jsonl"), Some(reason)));
+    assert_eq!(
+        (row["file"].as_str(), row["reason"].as_str()),
+        (Some("t.jsonl"), Some(reason))
+    );
 }
 
-/// One test a case: a piece of the sound line, what stands there instead, the field, the reason.
+/// One test a case: a piece of the sound line, what stands there instead, the field, the reason;
+/// `$id` is the id that is told.
 macro_rules! cases {
-    ($($name:ident: $from:expr => $to:expr, $field:expr, $reason:expr;)*) => {$(
+    ($id:expr; $($name:ident: $from:expr => $to:expr, $field:expr, $reason:expr;)*) => {$(
         #[test]
         fn $name() {
             assert!(SOUND.contains($from), "{:?} is not in the sound line", $from);
-            assert_told(stringify!($name), SOUND.replacen($from, $to, 1), "t", $field, $reason);
+            assert_told(stringify!($name), SOUND.replacen($from, $to, 1), $id, $field, $reason);
         }
     )*};
 }
@@ -52,7 +71,7 @@ const QUAT: &str = r#""quat":[1,0,0,0]"#;
 const WITHIN: &str = r#","turn_within":4"#;
 const AXIS: &str = r#""axis":{"tip":[0,0,1],"base":[0,0,1],"within":1}"#;
 
-cases! {
+cases! { "t";
     unknown_field: "\"tip\"" => "\"tool\"", "tool",
         "unknown field; known here: id, tip, xyz, xyz_within, quat, rotation, rpy, rpy_deg, \
          turn_within, turn_within_deg, axis";
@@ -106,6 +125,10 @@ cases! {
         "\"axis\":[{\"tip\":[0,0,1],\"base\":[0,0,1],\"within\":1},{\"tip\":[0,0,1]}]",
         "axis[1].base", "missing";
     no_axes: &format!("{QUAT}{WITHIN}") => "\"axis\":[]", "axis", "has no axes";
+}
+
+// Where the line is not JSON, its id is not known.
+cases! { "2";
     infinite_number: "\"turn_within\":4" => "\"turn_within\":1e999", "turn_within",
         "1e999 is not a finite number";
     negative_infinite_number: "[1,0,0],\"xyz_within\"" => "[1,-1e999,0],\"xyz_within\"", "xyz",
@@ -123,7 +146,13 @@ const BROKEN: &str = "not a JSON object: ";
 
 #[test]
 fn id_not_a_text() {
-    assert_told("id", SOUND.replace("\"t\"", "7"), "2", "id", "expected a text, found a number");
+    assert_told(
+        "id",
+        SOUND.replace("\"t\"", "7"),
+        "2",
+        "id",
+        "expected a text, found a number",
+    );
 }
 
 #[test]
@@ -132,15 +161,29 @@ fn too_many_axes() {
     let axes = format!("\"axis\":[{}]", [cone; 9].join(","));
     let text = SOUND.replace(&format!("{QUAT}{WITHIN}"), &axes);
     let most = balk::read::MAX_CONES;
-    assert_told("axes", text, "t", "axis", &format!("has 9 axes, more than {most}"));
+    assert_told(
+        "axes",
+        text,
+        "t",
+        "axis",
+        &format!("has 9 axes, more than {most}"),
+    );
 }
 
 #[test]
 fn lines_that_are_not_json() {
     let lines = [
         ("", "[1,2]", "expected a table, found a list".to_owned()),
-        ("id", "{\"id\":", format!("{BROKEN}EOF while parsing a value (column 6)")),
-        ("", "{} {}", format!("{BROKEN}trailing characters (column 4)")),
+        (
+            "id",
+            "{\"id\":",
+            format!("{BROKEN}EOF while parsing a value (column 6)"),
+        ),
+        (
+            "",
+            "{} {}",
+            format!("{BROKEN}trailing characters (column 4)"),
+        ),
     ];
     for (k, (field, text, reason)) in lines.iter().enumerate() {
         assert_told(&format!("not_json_{k}"), text, "2", field, reason);
@@ -148,8 +191,21 @@ fn lines_that_are_not_json() {
 }
 
 #[test]
+fn line_broken_inside_a_character() {
+    let text = "{\"id\":\"\u{e9}\",\u{e9}}";
+    let reason = format!("{BROKEN}key must be a string (column 12)");
+    assert_told("character", text, "2", "id", &reason);
+}
+
+#[test]
 fn binary_line() {
-    assert_told("binary", [b'{', 0xff, 0xfe, 0], "2", "", "not UTF-8 at byte 2");
+    assert_told(
+        "binary",
+        [b'{', 0xff, 0xfe, 0],
+        "2",
+        "",
+        "not UTF-8 at byte 2",
+    );
 }
 
 #[test]

@@ -48,15 +48,15 @@ fn out_of(placement: &Placement, vector: &Vector, point: bool) -> Vector {
     result
 }
 
-/// Tightens the components of `own` by `2 * fixed . own = sum`, first and third only: frames are
+/// Tightens the components of `own` by `fixed . own = sum`, first and third only: frames are
 /// chosen so that the second component of `fixed` is almost zero.
 #[inline]
 fn meet_along(own: &mut Vector, fixed: &Vector, sum: Product) -> Result<bool, Empty> {
     let mut changed = false;
-    let across = fixed[1].times(own[1]).double();
+    let across = fixed[1].times(own[1]);
     for (k, other) in [(0, 2), (2, 0)] {
-        let rest = sum.minus(across).minus(fixed[other].times(own[other]).double());
-        if let Some(value) = rest.over_twice(fixed[k]) {
+        let rest = sum.minus(across).minus(fixed[other].times(own[other]));
+        if let Some(value) = rest.over_interval(fixed[k]) {
             changed |= own[k].meet(value)?;
         }
     }
@@ -102,11 +102,11 @@ pub fn link(
         .square_before
         .meet(square.plus(previous.square_after).minus(along_previous))?;
     let difference = previous.square_after.minus(next.square_before);
-    forward |= meet_along(&mut next.before, &placement.back, difference.minus(square))?;
+    forward |= meet_along(&mut next.before, &placement.back, difference.minus(square).halve())?;
     back |= meet_along(
         &mut previous.after,
         &placement.origin,
-        difference.plus(square),
+        difference.plus(square).halve(),
     )?;
     Ok((back, forward))
 }
@@ -195,4 +195,42 @@ pub fn close_about_axis(
     }
     let (near, far) = close_at_distance(base, local, tip)?;
     Ok((at_base | near, far))
+}
+
+/// Tightens `own` by `sum_k fixed[k] . own[k] >= least`.
+pub fn meet_least<const N: usize>(
+    own: &mut [Vector; N],
+    fixed: &[Vector; N],
+    least: Product,
+) -> Result<bool, Empty> {
+    let mut most = 0;
+    for (own, fixed) in own.iter().zip(fixed) {
+        most += dot(fixed, own).hi;
+    }
+    let mut changed = false;
+    for (own, fixed) in own.iter_mut().zip(fixed) {
+        for (own, fixed) in own.iter_mut().zip(fixed) {
+            // What the others leave for this product.
+            let rest = least.lo - (most - own.times(*fixed).hi);
+            let own_least = Product {
+                lo: rest,
+                hi: i64::MAX >> 1,
+            };
+            if let Some(value) = own_least.over_interval(*fixed) {
+                let bound = if fixed.lo > 0 {
+                    Interval { lo: value.lo, ..Interval::UNIT }
+                } else {
+                    Interval { hi: value.hi, ..Interval::UNIT }
+                };
+                changed |= own.meet(bound)?;
+            }
+        }
+    }
+    if most < least.lo {
+        // The sum cannot be reached: the meets above have emptied a component unless every factor
+        // is too small to divide by.
+        let mut none = Product { lo: least.lo, hi: least.hi.max(least.lo) };
+        none.meet(Product { lo: most, hi: most })?;
+    }
+    Ok(changed)
 }

@@ -235,7 +235,8 @@ impl<'a> Network<'a> {
         }
         let tip = self.cells[self.tip_origin * stride].after;
         let axis = |k: usize| self.cells[(self.tip_axes + k) * stride].after;
-        if matches!(kind, Feature::TipAxis(_)) {
+        if let Feature::TipAxis(k) = kind {
+            self.turn_limit(k as usize)?;
             // The tip's axes close the loop for every other feature.
             if matches!(self.goal, Goal::Near { .. }) {
                 for cell in self.cells.iter_mut().step_by(stride) {
@@ -265,6 +266,38 @@ impl<'a> Network<'a> {
         }
         if at_tip {
             self.cells[last].pending |= Cell::LINK;
+        }
+        Ok(())
+    }
+
+    /// The angle between wanted and actual orientation: the trace of their product, or the inner
+    /// product of a cone's axis, is a linear function of the tip axes and bounded from below.
+    fn turn_limit(&mut self, k: usize) -> Result<(), Empty> {
+        let stride = self.stride();
+        let axes = self.tip_axes;
+        let at = |k: usize| (axes + k) * stride;
+        match self.goal {
+            Goal::Near { wanted, least, .. } => {
+                // Once for all three, when the last one comes by.
+                if k == 2 {
+                    let mut own = [0, 1, 2].map(|k| self.cells[at(k)].after);
+                    let changed = link::meet_least(&mut own, wanted, *least)?;
+                    for (k, own) in own.iter().enumerate() {
+                        self.cells[at(k)].after = *own;
+                        if changed {
+                            self.cells[at(k) + 1].pending |= Cell::LINK;
+                        }
+                    }
+                }
+            }
+            Goal::Axes { cones, .. } => {
+                let mut own = [self.cells[at(k)].after];
+                let changed = link::meet_least(&mut own, &[cones[k].wanted], cones[k].least)?;
+                self.cells[at(k)].after = own[0];
+                if changed {
+                    self.cells[at(k) + 1].pending |= Cell::LINK;
+                }
+            }
         }
         Ok(())
     }
@@ -352,6 +385,33 @@ impl<'a> Network<'a> {
             }
         }
         Ok(())
+    }
+
+    /// The chain.
+    pub fn chain(&self) -> Chain<'a> {
+        self.chain
+    }
+
+    /// The prepared target.
+    pub fn goal(&self) -> &'a Goal {
+        self.goal
+    }
+
+    /// What the node allows of every joint.
+    pub fn joint_spans(&self) -> &[JointSpan] {
+        &self.joints
+    }
+
+    /// How many joints move a feature.
+    pub fn moved_by(&self, feature: usize) -> usize {
+        match self.features[feature] {
+            Feature::Axis(joint) => joint as usize - 1,
+            Feature::Origin(joint) => match self.chain.joints[joint as usize - 1].motion {
+                Motion::Slide => joint as usize,
+                Motion::Turn => joint as usize - 1,
+            },
+            Feature::TipAxis(_) | Feature::TipOrigin => self.chain.joints.len(),
+        }
     }
 
     /// A box of one feature, for tests: in the joint's frame before and after motion.

@@ -14,6 +14,10 @@ pub struct GoalCone {
     pub in_tip: Vector,
     /// Where it may point in the base frame.
     pub in_base: Vector,
+    /// The middle of the cone.
+    pub wanted: Vector,
+    /// Least inner product of the axis with it.
+    pub least: Product,
 }
 
 /// A target prepared for propagation.
@@ -32,6 +36,12 @@ pub enum Goal {
         position: Vector,
         /// Where its axes may point.
         axes: [Vector; 3],
+        /// The wanted orientation's columns.
+        wanted: [Vector; 3],
+        /// Least trace of the product of the wanted orientation's transpose and the actual one.
+        least: Product,
+        /// Greatest sine of the turn between them, when that is below a quarter turn.
+        sine: Option<Interval>,
     },
 }
 
@@ -130,6 +140,8 @@ impl Goal {
                         GoalCone {
                             in_tip: rounded(cone.tip),
                             in_base: rounded(cone.base).map(|b| spread(b, cosine, sine)),
+                            wanted: rounded(cone.base),
+                            least: cosine.widen(),
                         }
                     })
                     .collect(),
@@ -139,10 +151,13 @@ impl Goal {
                 half_sine,
             } => {
                 let (cosine, sine) = from_half_sine(*half_sine);
+                let wanted = columns(*quaternion);
                 Goal::Near {
                     position,
-                    axes: columns(*quaternion)
-                        .map(|column| column.map(|entry| spread(entry, cosine, sine))),
+                    axes: wanted.map(|column| column.map(|entry| spread(entry, cosine, sine))),
+                    wanted,
+                    least: cosine.widen().double().plus(Interval::point(ONE).widen()),
+                    sine: (cosine.lo >= 0).then_some(sine),
                 }
             }
         }

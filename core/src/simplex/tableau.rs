@@ -14,7 +14,12 @@ pub(super) struct Variable<F> {
 }
 
 impl<F: Real> Variable<F> {
-    pub(super) const NONE: Self = Self { id: 0, value: F::ZERO, lower: F::ZERO, upper: F::ZERO };
+    pub(super) const NONE: Self = Self {
+        id: 0,
+        value: F::ZERO,
+        lower: F::ZERO,
+        upper: F::ZERO,
+    };
 
     /// At the value of `range` nearest 0.
     pub(super) fn new(id: u16, range: Range, scale: F) -> Self {
@@ -25,8 +30,12 @@ impl<F: Real> Variable<F> {
     }
 
     fn set_range(&mut self, range: Range, scale: F) {
-        self.lower = range.lower.map_or(-F::INFINITY, |end| F::from_i64(end) * scale);
-        self.upper = range.upper.map_or(F::INFINITY, |end| F::from_i64(end) * scale);
+        self.lower = range
+            .lower
+            .map_or(-F::INFINITY, |end| F::from_i64(end) * scale);
+        self.upper = range
+            .upper
+            .map_or(F::INFINITY, |end| F::from_i64(end) * scale);
     }
 
     /// How far outside its bounds, beyond tolerance, and whether below; `None` if inside.
@@ -77,8 +86,19 @@ impl<F: Real> Tableau<'_, F> {
             let least_index = pivots >= patience;
             let Some(conflict) = self.violated(least_index) else {
                 if fresh {
-                    let finite = self.basic.iter().all(|variable| variable.value.magnitude() < F::INFINITY);
-                    return (if finite { Outcome::Feasible } else { Outcome::Unstable }, None, pivots);
+                    let finite = self
+                        .basic
+                        .iter()
+                        .all(|variable| variable.value.magnitude() < F::INFINITY);
+                    return (
+                        if finite {
+                            Outcome::Feasible
+                        } else {
+                            Outcome::Unstable
+                        },
+                        None,
+                        pivots,
+                    );
                 }
                 self.refresh();
                 fresh = true;
@@ -101,9 +121,15 @@ impl<F: Real> Tableau<'_, F> {
     fn violated(&self, least_index: bool) -> Option<Conflict> {
         let mut chosen: Option<(F, u16, Conflict)> = None;
         for (row, variable) in self.basic.iter().enumerate() {
-            let Some((violation, below)) = variable.violation() else { continue };
+            let Some((violation, below)) = variable.violation() else {
+                continue;
+            };
             let better = chosen.as_ref().is_none_or(|&(greatest, least, _)| {
-                if least_index { variable.id < least } else { violation > greatest }
+                if least_index {
+                    variable.id < least
+                } else {
+                    violation > greatest
+                }
             });
             if better {
                 chosen = Some((violation, variable.id, Conflict { row, below }));
@@ -124,7 +150,12 @@ impl<F: Real> Tableau<'_, F> {
         let gap = end - sign * variable.value;
         let mut furthest = F::ZERO;
         let mut chosen: Option<(F, u16, usize)> = None;
-        for (column, (&entry, other)) in self.row(conflict.row).iter().zip(self.nonbasic.iter()).enumerate() {
+        for (column, (&entry, other)) in self
+            .row(conflict.row)
+            .iter()
+            .zip(self.nonbasic.iter())
+            .enumerate()
+        {
             let slope = sign * entry;
             let (size, up) = (slope.magnitude(), slope > F::ZERO);
             let bound = other.bound(up);
@@ -139,23 +170,41 @@ impl<F: Real> Tableau<'_, F> {
             }
             let score = gap.smaller(size * room) * size;
             let better = chosen.is_none_or(|(best, least, _)| {
-                if least_index { other.id < least } else { score > best }
+                if least_index {
+                    other.id < least
+                } else {
+                    score > best
+                }
             });
             if better {
                 chosen = Some((score, other.id, column));
             }
         }
-        if end - furthest > tolerance(end) { None } else { chosen.map(|(_, _, column)| column) }
+        if end - furthest > tolerance(end) {
+            None
+        } else {
+            chosen.map(|(_, _, column)| column)
+        }
     }
 
     /// Moves a violated basic variable to its nearest bound and exchanges it with a nonbasic one.
     fn repair(&mut self, conflict: Conflict, column: usize) {
-        let Some(leaving) = self.basic.get_mut(conflict.row) else { return };
-        let Some(entering) = self.nonbasic.get_mut(column) else { return };
+        let Some(leaving) = self.basic.get_mut(conflict.row) else {
+            return;
+        };
+        let Some(entering) = self.nonbasic.get_mut(column) else {
+            return;
+        };
         let pivot_row = row_mut(self.entries, self.stride, conflict.row, self.work.len());
-        let Some(&pivot) = pivot_row.get(column) else { return };
+        let Some(&pivot) = pivot_row.get(column) else {
+            return;
+        };
 
-        let end = if conflict.below { leaving.lower } else { leaving.upper };
+        let end = if conflict.below {
+            leaving.lower
+        } else {
+            leaving.upper
+        };
         let step = (end - leaving.value) / pivot;
         leaving.value = end;
         entering.value = entering.value + step;
@@ -171,9 +220,14 @@ impl<F: Real> Tableau<'_, F> {
         }
         copy(self.work, pivot_row);
 
-        let rows = self.entries.chunks_exact_mut(self.stride).zip(self.basic.iter_mut());
+        let rows = self
+            .entries
+            .chunks_exact_mut(self.stride)
+            .zip(self.basic.iter_mut());
         for (row, (entries, variable)) in rows.enumerate() {
-            let Some(slot) = entries.get_mut(column) else { return };
+            let Some(slot) = entries.get_mut(column) else {
+                return;
+            };
             let factor = *slot;
             if row == conflict.row || factor == F::ZERO {
                 continue;
@@ -190,24 +244,39 @@ impl<F: Real> Tableau<'_, F> {
 
     /// Recomputes every basic value from the nonbasic ones.
     fn refresh(&mut self) {
-        for (entries, variable) in self.entries.chunks_exact(self.stride).zip(self.basic.iter_mut()) {
+        for (entries, variable) in self
+            .entries
+            .chunks_exact(self.stride)
+            .zip(self.basic.iter_mut())
+        {
             variable.value = value_of(entries, self.nonbasic);
         }
     }
 
     /// Writes `row` into the last row in use, which becomes basic.
     pub(super) fn fill_last_row(&mut self, row: Row<'_>) {
-        let Some(last) = self.basic.len().checked_sub(1) else { return };
+        let Some(last) = self.basic.len().checked_sub(1) else {
+            return;
+        };
         let largest = row.terms.iter().fold(F::ZERO, |largest, term| {
-            let scale = self.unknown_scales.get(usize::from(term.unknown)).copied().unwrap_or(F::ZERO);
+            let scale = self
+                .unknown_scales
+                .get(usize::from(term.unknown))
+                .copied()
+                .unwrap_or(F::ZERO);
             largest.larger(F::from_i64(term.coefficient.into()).magnitude() * scale)
         });
-        let scale = if largest > F::ZERO { F::ONE / largest.power_of_two() } else { F::ONE };
+        let scale = if largest > F::ZERO {
+            F::ONE / largest.power_of_two()
+        } else {
+            F::ONE
+        };
         let columns = self.nonbasic.len();
         self.work.fill(F::ZERO);
         for term in row.terms {
             let unknown = usize::from(term.unknown);
-            let (Some(&unknown_scale), Some(&place)) = (self.unknown_scales.get(unknown), self.places.get(unknown))
+            let (Some(&unknown_scale), Some(&place)) =
+                (self.unknown_scales.get(unknown), self.places.get(unknown))
             else {
                 continue;
             };
@@ -240,13 +309,18 @@ impl<F: Real> Tableau<'_, F> {
 
     /// Sets the range of an unknown; one that is nonbasic moves to the nearest allowed value.
     pub(super) fn set_range(&mut self, unknown: usize, range: Range, scale: F) {
-        let Some(&place) = self.places.get(unknown) else { return };
+        let Some(&place) = self.places.get(unknown) else {
+            return;
+        };
         let place = usize::from(place);
         match place.checked_sub(self.nonbasic.len()) {
             None => {
                 if let Some(variable) = self.nonbasic.get_mut(place) {
                     variable.set_range(range, scale);
-                    variable.value = variable.value.larger(variable.lower).smaller(variable.upper);
+                    variable.value = variable
+                        .value
+                        .larger(variable.lower)
+                        .smaller(variable.upper);
                 }
             }
             Some(row) => {
@@ -259,7 +333,9 @@ impl<F: Real> Tableau<'_, F> {
 
     fn row(&self, row: usize) -> &[F] {
         let start = row * self.stride;
-        self.entries.get(start..start + self.nonbasic.len()).unwrap_or_default()
+        self.entries
+            .get(start..start + self.nonbasic.len())
+            .unwrap_or_default()
     }
 
     /// Records where the variable at `place` is, if it is an unknown.
@@ -268,7 +344,9 @@ impl<F: Real> Tableau<'_, F> {
             None => self.nonbasic.get(place),
             Some(row) => self.basic.get(row),
         };
-        if let Some(slot) = variable.and_then(|variable| self.places.get_mut(usize::from(variable.id))) {
+        if let Some(slot) =
+            variable.and_then(|variable| self.places.get_mut(usize::from(variable.id)))
+        {
             *slot = place as u16;
         }
     }
@@ -280,7 +358,12 @@ fn row_mut<F>(entries: &mut [F], stride: usize, row: usize, length: usize) -> &m
 }
 
 fn value_of<F: Real>(entries: &[F], nonbasic: &[Variable<F>]) -> F {
-    entries.iter().zip(nonbasic).fold(F::ZERO, |sum, (&entry, variable)| sum + entry * variable.value)
+    entries
+        .iter()
+        .zip(nonbasic)
+        .fold(F::ZERO, |sum, (&entry, variable)| {
+            sum + entry * variable.value
+        })
 }
 
 fn copy<F: Copy>(from: &[F], to: &mut [F]) {

@@ -35,7 +35,9 @@ pub(super) enum Screening {
 fn screen(solver: &Solver, target: &Target, splits: u32) -> Screening {
     match solver.refused(target, splits as usize) {
         (true, _) => Screening::Refused { record: Vec::new() },
-        (false, _) => Screening::Passed { reason: "not shown to be out of reach" },
+        (false, _) => Screening::Passed {
+            reason: "not shown to be out of reach",
+        },
     }
 }
 
@@ -47,19 +49,29 @@ impl<'a> Solvers<'a> {
     ///
     /// No tip can be packed; why the first cannot.
     pub fn new(machine: &'a Machine, task: Task) -> Result<Self, PackError> {
-        let mut of_tip: Vec<_> =
-            (0..machine.tips.len()).map(|tip| Solver::new(machine, tip)).collect();
+        let mut of_tip: Vec<_> = (0..machine.tips.len())
+            .map(|tip| Solver::new(machine, tip))
+            .collect();
         if of_tip.iter().all(Result::is_err) {
             of_tip.swap_remove(0)?;
         }
-        Ok(Solvers { machine, of_tip, task })
+        Ok(Solvers {
+            machine,
+            of_tip,
+            task,
+        })
     }
 
     /// The answer to the target on `line` of `file`.
     pub fn answer(&self, line: &Line, file: &str) -> Answer {
         let target = match read::target(line, file, self.machine) {
             Ok(target) => target,
-            Err((id, defect)) => return Answer { id, outcome: Outcome::Wrong(defect) },
+            Err((id, defect)) => {
+                return Answer {
+                    id,
+                    outcome: Outcome::Wrong(defect),
+                };
+            }
         };
         let outcome = match (&self.of_tip[target.tip], self.task) {
             (Err(error), _) => Outcome::Wrong(Defect {
@@ -69,10 +81,14 @@ impl<'a> Solvers<'a> {
                 reason: error.to_string(),
             }),
             (Ok(solver), Task::Decide { nodes }) => Outcome::Decided(solver.decide(&target, nodes)),
-            (Ok(solver), Task::Screen { splits }) => {
-                Outcome::Screened { splits, screening: screen(solver, &target, splits) }
-            }
+            (Ok(solver), Task::Screen { splits }) => Outcome::Screened {
+                splits,
+                screening: screen(solver, &target, splits),
+            },
         };
-        Answer { id: target.id, outcome }
+        Answer {
+            id: target.id,
+            outcome,
+        }
     }
 }

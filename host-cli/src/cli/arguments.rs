@@ -101,12 +101,16 @@ pub(super) enum Task {
 impl From<Command> for Job {
     fn from(command: Command) -> Job {
         match command {
-            Command::Decide { inputs, nodes } => {
-                Job { inputs, task: Task::Decide { nodes: nodes.get() } }
-            }
-            Command::Screen { inputs, splits } => {
-                Job { inputs, task: Task::Screen { splits: splits.get() } }
-            }
+            Command::Decide { inputs, nodes } => Job {
+                inputs,
+                task: Task::Decide { nodes: nodes.get() },
+            },
+            Command::Screen { inputs, splits } => Job {
+                inputs,
+                task: Task::Screen {
+                    splits: splits.get(),
+                },
+            },
         }
     }
 }

@@ -42,7 +42,11 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> Status {
         Err(message) => {
             // Nothing is left to tell the user with if this cannot be printed.
             let _ = message.print();
-            return if message.use_stderr() { Status::Usage } else { Status::Clear };
+            return if message.use_stderr() {
+                Status::Usage
+            } else {
+                Status::Clear
+            };
         }
     };
     match answer_all(&arguments.command.into()) {
@@ -85,12 +89,23 @@ fn complain(message: &dyn std::fmt::Display) {
 
 /// Answers every target of the job's file, in order.
 fn answer_all(job: &Job) -> Result<Tally, Failure> {
-    let Inputs { machine, targets, json, threads, quiet } = &job.inputs;
+    let Inputs {
+        machine,
+        targets,
+        json,
+        threads,
+        quiet,
+    } = &job.inputs;
     let (machine, machine_file) = read_machine(machine)?;
-    let solvers = Solvers::new(&machine, job.task)
-        .map_err(|source| Failure::Machine { file: machine_file, source })?;
+    let solvers = Solvers::new(&machine, job.task).map_err(|source| Failure::Machine {
+        file: machine_file,
+        source,
+    })?;
     let targets_file = name_of(targets);
-    let input_failure = |source| Failure::Input { file: targets_file.clone(), source };
+    let input_failure = |source| Failure::Input {
+        file: targets_file.clone(),
+        source,
+    };
     let (source, size) = open(targets).map_err(input_failure)?;
     let mut lines = Lines::new(BufReader::with_capacity(READ_BYTES, source));
     let pool = rayon::ThreadPoolBuilder::new()
@@ -107,7 +122,10 @@ fn answer_all(job: &Job) -> Result<Tally, Failure> {
         }
         let rows: Vec<_> = pool.install(|| {
             let answer = |line| solvers.answer(line, &targets_file);
-            chunk.par_iter().map(|line| printer.row(&answer(line), &machine)).collect()
+            chunk
+                .par_iter()
+                .map(|line| printer.row(&answer(line), &machine))
+                .collect()
         });
         progress.pause(|| {
             for complaint in rows.iter().filter_map(|row| row.complaint.as_ref()) {
@@ -141,7 +159,11 @@ fn read_machine(path: &Path) -> Result<(Machine, String), Failure> {
 
 /// What messages call the file `path`.
 fn name_of(path: &Path) -> String {
-    if is_standard_input(path) { "<stdin>".to_owned() } else { path.display().to_string() }
+    if is_standard_input(path) {
+        "<stdin>".to_owned()
+    } else {
+        path.display().to_string()
+    }
 }
 
 fn is_standard_input(path: &Path) -> bool {
@@ -154,6 +176,10 @@ fn open(path: &Path) -> io::Result<(Box<dyn Read>, Option<u64>)> {
         return Ok((Box::new(io::stdin()), None));
     }
     let file = File::open(path)?;
-    let size = file.metadata().ok().filter(|meta| meta.is_file()).map(|meta| meta.len());
+    let size = file
+        .metadata()
+        .ok()
+        .filter(|meta| meta.is_file())
+        .map(|meta| meta.len());
     Ok((Box::new(file), size))
 }

@@ -42,14 +42,22 @@ pub(super) struct Row {
 
 impl Printer {
     pub fn new(json: bool, quiet: bool) -> Self {
-        Printer { json, quiet, start: Instant::now(), header_due: !json && !quiet }
+        Printer {
+            json,
+            quiet,
+            start: Instant::now(),
+            header_due: !json && !quiet,
+        }
     }
 
     /// The row for `answer`; needs no access to the output, so that it can be made anywhere.
     pub fn row(&self, answer: &Answer, machine: &Machine) -> Row {
         let record = Record::new(answer, machine);
         let text = if self.json {
-            format!("{}\n", serde_json::to_string(&record).expect("a record has only plain fields"))
+            format!(
+                "{}\n",
+                serde_json::to_string(&record).expect("a record has only plain fields")
+            )
         } else {
             record.for_people()
         };
@@ -57,7 +65,11 @@ impl Printer {
             Outcome::Wrong(defect) if !self.quiet => Some(defect.clone()),
             _ => None,
         };
-        Row { word: record.word, text, complaint }
+        Row {
+            word: record.word,
+            text,
+            complaint,
+        }
     }
 
     /// Writes `rows` at once, so that whoever reads them sees whole lines soon.
@@ -84,7 +96,11 @@ impl Printer {
             .said()
             .map(|(word, count)| {
                 let style = word.style();
-                let plural = if word == Word::Error && count > 1 { "s" } else { "" };
+                let plural = if word == Word::Error && count > 1 {
+                    "s"
+                } else {
+                    ""
+                };
                 format!("{style}{count} {}{plural}{style:#}", word.text())
             })
             .collect();
@@ -100,10 +116,14 @@ impl Printer {
     fn print(&self, text: &str) -> io::Result<()> {
         if self.json {
             let mut output = io::stdout().lock();
-            output.write_all(text.as_bytes()).and_then(|()| output.flush())
+            output
+                .write_all(text.as_bytes())
+                .and_then(|()| output.flush())
         } else {
             let mut output = AutoStream::auto(io::stdout().lock());
-            output.write_all(text.as_bytes()).and_then(|()| output.flush())
+            output
+                .write_all(text.as_bytes())
+                .and_then(|()| output.flush())
         }
     }
 }
@@ -162,31 +182,53 @@ impl<'a> Record<'a> {
                 reason: Some(&defect.reason),
                 ..empty
             },
-            Outcome::Decided(Decision { verdict, nodes, seconds }) => {
-                let decided = Record { nodes: Some(*nodes), seconds: Some(*seconds), ..empty };
+            Outcome::Decided(Decision {
+                verdict,
+                nodes,
+                seconds,
+            }) => {
+                let decided = Record {
+                    nodes: Some(*nodes),
+                    seconds: Some(*seconds),
+                    ..empty
+                };
                 match verdict {
                     Verdict::Reachable { joints } => Record {
                         word: Word::Reachable,
-                        joints: Some(Joints { machine, values: joint_values(machine, joints) }),
+                        joints: Some(Joints {
+                            machine,
+                            values: joint_values(machine, joints),
+                        }),
                         ..decided
                     },
-                    Verdict::Unreachable { proof } => {
-                        Record { word: Word::Unreachable, proof: Some(hex(proof)), ..decided }
-                    }
-                    Verdict::Undecided { reason } => {
-                        Record { word: Word::Undecided, reason: Some(reason), ..decided }
-                    }
+                    Verdict::Unreachable { proof } => Record {
+                        word: Word::Unreachable,
+                        proof: Some(hex(proof)),
+                        ..decided
+                    },
+                    Verdict::Undecided { reason } => Record {
+                        word: Word::Undecided,
+                        reason: Some(reason),
+                        ..decided
+                    },
                 }
             }
             Outcome::Screened { splits, screening } => {
-                let screened = Record { splits: Some(*splits), ..empty };
+                let screened = Record {
+                    splits: Some(*splits),
+                    ..empty
+                };
                 match screening {
-                    Screening::Refused { record } => {
-                        Record { word: Word::Refused, record: Some(hex(record)), ..screened }
-                    }
-                    Screening::Passed { reason } => {
-                        Record { word: Word::Passed, reason: Some(reason), ..screened }
-                    }
+                    Screening::Refused { record } => Record {
+                        word: Word::Refused,
+                        record: Some(hex(record)),
+                        ..screened
+                    },
+                    Screening::Passed { reason } => Record {
+                        word: Word::Passed,
+                        reason: Some(reason),
+                        ..screened
+                    },
                 }
             }
         }
@@ -196,8 +238,13 @@ impl<'a> Record<'a> {
         let style = self.word.style();
         let mut details = Vec::new();
         if let Some(line) = self.line {
-            let place = self.field.map_or(String::new(), |field| format!("{}: ", printable(field)));
-            details.push(format!("line {line}: {place}{}", self.reason.map_or(String::new(), printable)));
+            let place = self
+                .field
+                .map_or(String::new(), |field| format!("{}: ", printable(field)));
+            details.push(format!(
+                "line {line}: {place}{}",
+                self.reason.map_or(String::new(), printable)
+            ));
         } else if let Some(reason) = self.reason {
             details.push(reason.to_owned());
         }
@@ -262,8 +309,10 @@ impl Serialize for Joints<'_> {
 
 /// Bytes as lower-case hexadecimal digits.
 fn hex(bytes: &[u8]) -> String {
-    bytes.iter().fold(String::with_capacity(2 * bytes.len()), |mut text, byte| {
-        let _ = write!(text, "{byte:02x}");
-        text
-    })
+    bytes
+        .iter()
+        .fold(String::with_capacity(2 * bytes.len()), |mut text, byte| {
+            let _ = write!(text, "{byte:02x}");
+            text
+        })
 }

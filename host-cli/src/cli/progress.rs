@@ -25,7 +25,10 @@ impl Progress {
             let style = ProgressStyle::with_template(template).expect("the template is a constant");
             ProgressBar::with_draw_target(length, ProgressDrawTarget::hidden()).with_style(style)
         });
-        Progress { bar, start: Instant::now() }
+        Progress {
+            bar,
+            start: Instant::now(),
+        }
     }
 
     /// Shows that `bytes` of the input and `targets` are done.

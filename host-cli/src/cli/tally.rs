@@ -88,7 +88,10 @@ impl Tally {
 
     /// The words that were said, and how often.
     pub fn said(&self) -> impl Iterator<Item = (Word, u64)> {
-        Word::ALL.into_iter().map(|word| (word, self.of(word))).filter(|(_, count)| *count > 0)
+        Word::ALL
+            .into_iter()
+            .map(|word| (word, self.of(word)))
+            .filter(|(_, count)| *count > 0)
     }
 
     /// The exit status for these answers. Errors go first: an answer that is missing must not be

@@ -14,10 +14,8 @@ use crate::model::{Joint, Kind};
 
 use super::Flaw;
 use super::fields::Field;
-use super::machine::{
-    Draft, MAX_ANGLE, MAX_JOINTS, MAX_LENGTH, Parent, joint_name, kind, read_limits,
-    tolerance,
-};
+use super::forest::{Draft, Parent};
+use super::machine::{MAX_ANGLE, MAX_JOINTS, MAX_LENGTH, joint_name, kind, read_limits, tolerance};
 use super::pose::within;
 
 #[derive(Clone, Copy, PartialEq, Eq)]
@@ -29,15 +27,19 @@ enum Convention {
 /// The joints of a `[dh]` table, in one chain from the base.
 pub(super) fn joints(field: Field) -> Result<Vec<Draft>, Flaw> {
     let mut fields = field.table(&["convention", "angles", "rows"])?;
-    let convention = fields
-        .need("convention")?
-        .choice(&[("standard", Convention::Standard), ("modified", Convention::Modified)])?;
-    let unit =
-        fields.need("angles")?.choice(&[("degrees", 1f64.to_radians()), ("radians", 1.0)])?;
+    let convention = fields.need("convention")?.choice(&[
+        ("standard", Convention::Standard),
+        ("modified", Convention::Modified),
+    ])?;
+    let unit = fields
+        .need("angles")?
+        .choice(&[("degrees", 1f64.to_radians()), ("radians", 1.0)])?;
     let rows = fields.need("rows")?.bounded(MAX_JOINTS, "rows")?;
     let mut drafts: Vec<Draft> = Vec::with_capacity(rows.len());
     for (place, row) in rows.into_iter().enumerate() {
-        let before = drafts.last().map_or_else(Isometry3::identity, |draft| draft.end);
+        let before = drafts
+            .last()
+            .map_or_else(Isometry3::identity, |draft| draft.end);
         drafts.push(joint(row, place, convention, unit, before)?);
     }
     Ok(drafts)
@@ -51,18 +53,32 @@ fn joint(
     before: Isometry3<f64>,
 ) -> Result<Draft, Flaw> {
     let path = row.path().to_owned();
-    let mut fields =
-        row.table(&["name", "a", "alpha", "d", "theta", "kind", "limits", "tolerance"])?;
-    let (max, unit_name) =
-        (MAX_ANGLE / unit, if unit == 1.0 { "radians" } else { "degrees" });
+    let mut fields = row.table(&[
+        "name",
+        "a",
+        "alpha",
+        "d",
+        "theta",
+        "kind",
+        "limits",
+        "tolerance",
+    ])?;
+    let (max, unit_name) = (
+        MAX_ANGLE / unit,
+        if unit == 1.0 { "radians" } else { "degrees" },
+    );
     let mut number = |key, max, unit| {
-        fields.take(key).map_or(Ok(0.0), |field| within(&field, max, unit))
+        fields
+            .take(key)
+            .map_or(Ok(0.0), |field| within(&field, max, unit))
     };
     let a = number("a", MAX_LENGTH, "metres")?;
     let alpha = number("alpha", max, unit_name)? * unit;
     let d = number("d", MAX_LENGTH, "metres")?;
     let theta = number("theta", max, unit_name)? * unit;
-    let kind = fields.take("kind").map_or(Ok(Kind::Revolute), |field| kind(&field))?;
+    let kind = fields
+        .take("kind")
+        .map_or(Ok(Kind::Revolute), |field| kind(&field))?;
     let limits = match (fields.take("limits"), kind) {
         (Some(field), Kind::Fixed) => return Err(field.flaw("a fixed joint has no limits")),
         (Some(field), Kind::Prismatic) => Some(read_limits(field, kind, 1.0)?),
@@ -85,8 +101,24 @@ fn joint(
         Convention::Standard => (before * motion, link),
     };
     let axis = Vector3::z_axis();
-    let joint = Joint { name, kind, parent: None, placement, axis, limits, tolerance, follows: None };
-    Ok(Draft { joint, parent: Parent::Above, follows: None, path, name_place, end })
+    let joint = Joint {
+        name,
+        kind,
+        parent: None,
+        placement,
+        axis,
+        limits,
+        tolerance,
+        follows: None,
+    };
+    Ok(Draft {
+        joint,
+        parent: Parent::Above,
+        follows: None,
+        path,
+        name_place,
+        end,
+    })
 }
 
 /// Translation by `length` along and rotation by `angle` about the unit vector `axis`.

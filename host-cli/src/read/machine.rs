@@ -1,13 +1,16 @@
 //! Reads a machine file.
 
 use std::collections::HashMap;
+use std::f64::consts::PI;
 
 use nalgebra::{Isometry3, Vector3};
 
-use crate::model::{Follows, Joint, Kind, Machine, Tip, Tolerance};
+use crate::model::{Joint, Kind, Machine, Tip, Tolerance};
 
-use super::fields::{Field, Fields, from_toml};
+use super::fields::{Field, Fields};
+use super::forest::{Draft, FollowsDraft, Forest, Parent, lookup, names_of, resolve};
 use super::pose::{direction, placement, within};
+use super::tree::from_toml;
 use super::{Defect, Flaw, dh};
 
 /// Most joints a machine file may have, fixed ones included.
@@ -20,36 +23,10 @@ pub const MAX_LENGTH: f64 = 1e6;
 /// Largest size of an angle in a machine file, radians: 150,000 turns, beyond which a double no
 /// longer tells a micro-turn.
 pub const MAX_ANGLE: f64 = 1e6;
+/// Largest size of a follower's ratio in a machine file.
+pub const MAX_RATIO: f64 = 1e6;
 /// Largest machine file, bytes.
 pub const MAX_MACHINE_BYTES: usize = 1 << 20;
-
-/// A joint as it stands in the file, its references not yet resolved.
-pub(super) struct Draft {
-    pub joint: Joint,
-    pub parent: Parent,
-    pub follows: Option<FollowsDraft>,
-    /// Path of the joint in the file.
-    pub path: String,
-    /// Where a defect of the joint's name is reported.
-    pub name_place: Flaw,
-    /// From the joint's own frame to the frame that a child or a tip naming this joint means.
-    pub end: Isometry3<f64>,
-}
-
-/// What a joint or tip says of its parent.
-pub(super) enum Parent {
-    /// The joint above in the file.
-    Above,
-    /// The named joint, or the base.
-    Named(Field),
-}
-
-/// A `follows` table whose joint is still a name.
-pub(super) struct FollowsDraft {
-    other: Field,
-    ratio: f64,
-    offset: f64,
-}
 
 /// Reads the machine that `bytes`, the content of `file`, describe.
 ///
@@ -65,10 +42,17 @@ pub fn machine(bytes: &[u8], file: &str) -> Result<Machine, Defect> {
 
 fn parse(bytes: &[u8], file: &str) -> Result<Machine, Flaw> {
     if bytes.len() > MAX_MACHINE_BYTES {
-        return Err(Flaw::of_file(format!("longer than {MAX_MACHINE_BYTES} bytes")));
+        return Err(Flaw::of_file(format!(
+            "longer than {MAX_MACHINE_BYTES} bytes"
+        )));
     }
     let text = std::str::from_utf8(bytes).map_err(|error| Flaw {
-        line: Some(1 + bytes[..error.valid_up_to()].iter().filter(|b| **b == b'\n').count()),
+        line: Some(
+            1 + bytes[..error.valid_up_to()]
+                .iter()
+                .filter(|b| **b == b'\n')
+                .count(),
+        ),
         field: String::new(),
         reason: "not a text file (invalid UTF-8)".to_owned(),
     })?;
@@ -80,7 +64,11 @@ fn parse(bytes: &[u8], file: &str) -> Result<Machine, Flaw> {
     };
     let tips = root.take("tip");
     let (drafts, tips) = match root.one_of(&["joint", "dh"])? {
-        None => return Err(Flaw::of_file("describes no machine: neither [[joint]] nor [dh]")),
+        None => {
+            return Err(Flaw::of_file(
+                "describes no machine: neither [[joint]] nor [dh]",
+            ));
+        }
         Some((0, field)) => {
             let tips = tips.ok_or_else(|| Flaw::of_file("has no tip: no [[tip]]"))?;
             (joints(field)?, Some(tips))
@@ -88,21 +76,29 @@ fn parse(bytes: &[u8], file: &str) -> Result<Machine, Flaw> {
         Some((_, field)) => (dh::joints(field)?, tips),
     };
     let names = names_of(&drafts)?;
-    let (joints, ends, place_of) = resolve(drafts, &names)?;
+    let forest = resolve(drafts, &names)?;
     let tips = match tips {
-        Some(field) => read_tips(field, &names, &ends, &place_of)?,
+        Some(field) => read_tips(field, &names, &forest)?,
         None => {
             let last = names.len() - 1;
-            let placement = ends[last];
-            vec![Tip { name: "flange".to_owned(), parent: Some(place_of[last]), placement }]
+            vec![Tip {
+                name: "flange".to_owned(),
+                parent: Some(forest.place_of[last]),
+                placement: forest.ends[last],
+            }]
         }
     };
-    Ok(Machine { name, joints, tips })
+    Ok(Machine {
+        name,
+        joints: forest.joints,
+        tips,
+    })
 }
 
 fn stem(file: &str) -> String {
     let path = std::path::Path::new(file);
-    path.file_stem().map_or(file.to_owned(), |stem| stem.to_string_lossy().into_owned())
+    path.file_stem()
+        .map_or(file.to_owned(), |stem| stem.to_string_lossy().into_owned())
 }
 
 fn joints(field: Field) -> Result<Vec<Draft>, Flaw> {
@@ -113,8 +109,17 @@ fn joints(field: Field) -> Result<Vec<Draft>, Flaw> {
 fn joint(field: Field) -> Result<Draft, Flaw> {
     let path = field.path().to_owned();
     let mut fields = field.table(&[
-        "name", "kind", "parent", "xyz", "rpy", "rpy_deg", "axis", "limits", "limits_deg",
-        "tolerance", "follows",
+        "name",
+        "kind",
+        "parent",
+        "xyz",
+        "rpy",
+        "rpy_deg",
+        "axis",
+        "limits",
+        "limits_deg",
+        "tolerance",
+        "follows",
     ])?;
     let name_field = fields.need("name")?;
     let kind = kind(&fields.need("kind")?)?;
@@ -141,9 +146,25 @@ fn joint(field: Field) -> Result<Draft, Flaw> {
     let tolerance = tolerance(&mut fields)?;
     let follows = follows(&mut fields, kind)?;
     let name = joint_name(&name_field)?;
-    let joint = Joint { name, kind, parent: None, placement, axis, limits, tolerance, follows: None };
+    let joint = Joint {
+        name,
+        kind,
+        parent: None,
+        placement,
+        axis,
+        limits,
+        tolerance,
+        follows: None,
+    };
     let name_place = name_field.flaw("");
-    Ok(Draft { joint, parent, follows, path, name_place, end: Isometry3::identity() })
+    Ok(Draft {
+        joint,
+        parent,
+        follows,
+        path,
+        name_place,
+        end: Isometry3::identity(),
+    })
 }
 
 /// A joint's name, which must differ from the base's.
@@ -168,7 +189,10 @@ pub(super) fn read_limits(field: Field, kind: Kind, unit: f64) -> Result<[f64; 2
     let reversed = field.flaw("");
     let (max, name) = match kind {
         Kind::Prismatic => (MAX_LENGTH, "metres"),
-        _ => (MAX_ANGLE / unit, if unit == 1.0 { "radians" } else { "degrees" }),
+        _ => (
+            MAX_ANGLE / unit,
+            if unit == 1.0 { "radians" } else { "degrees" },
+        ),
     };
     let [lower, upper] = field.list_of::<2>()?;
     let (lower, upper) = (within(&lower, max, name)?, within(&upper, max, name)?);
@@ -179,13 +203,21 @@ pub(super) fn read_limits(field: Field, kind: Kind, unit: f64) -> Result<[f64; 2
     Ok([lower * unit, upper * unit])
 }
 
-/// The optional `tolerance` table.
+/// The optional `tolerance` table. No two orientations differ by more than half a turn, so a
+/// larger angle says no more than that one.
 pub(super) fn tolerance(fields: &mut Fields) -> Result<Tolerance, Flaw> {
-    let Some(field) = fields.take("tolerance") else { return Ok(Tolerance::default()) };
+    let Some(field) = fields.take("tolerance") else {
+        return Ok(Tolerance::default());
+    };
     let mut inner = field.table(&["xyz", "angle", "angle_deg"])?;
-    let xyz = inner.take("xyz").map_or(Ok(0.0), |field| field.not_negative())?;
+    let xyz = match inner.take("xyz") {
+        Some(field) => field
+            .not_negative()
+            .and_then(|_| within(&field, MAX_LENGTH, "metres"))?,
+        None => 0.0,
+    };
     let angle = match inner.angle("angle")? {
-        Some((angle, field)) => field.not_negative().map(|_| angle)?,
+        Some((angle, field)) => field.not_negative().map(|_| angle.min(PI))?,
         None => 0.0,
     };
     Ok(Tolerance { xyz, angle })
@@ -193,13 +225,17 @@ pub(super) fn tolerance(fields: &mut Fields) -> Result<Tolerance, Flaw> {
 
 /// The optional `follows` table of a joint of kind `kind`.
 pub(super) fn follows(fields: &mut Fields, kind: Kind) -> Result<Option<FollowsDraft>, Flaw> {
-    let Some(field) = fields.take("follows") else { return Ok(None) };
+    let Some(field) = fields.take("follows") else {
+        return Ok(None);
+    };
     if kind == Kind::Fixed {
         return Err(field.flaw("a fixed joint cannot follow another"));
     }
     let mut inner = field.table(&["joint", "ratio", "offset", "offset_deg"])?;
     let other = inner.need("joint")?;
-    let ratio = inner.take("ratio").map_or(Ok(1.0), |field| within(&field, MAX_LENGTH, ""))?;
+    let ratio = inner
+        .take("ratio")
+        .map_or(Ok(1.0), |field| within(&field, MAX_RATIO, "times"))?;
     let offset = match inner.one_of(&["offset", "offset_deg"])? {
         None => 0.0,
         Some((1, field)) if kind == Kind::Prismatic => {
@@ -208,124 +244,17 @@ pub(super) fn follows(fields: &mut Fields, kind: Kind) -> Result<Option<FollowsD
         Some((1, field)) => within(&field, MAX_ANGLE.to_degrees(), "degrees")?.to_radians(),
         Some((_, field)) => within(&field, MAX_ANGLE, "radians or metres")?,
     };
-    Ok(Some(FollowsDraft { other, ratio, offset }))
-}
-
-/// Place in the file of every joint name.
-fn names_of(drafts: &[Draft]) -> Result<HashMap<String, usize>, Flaw> {
-    let mut names = HashMap::new();
-    for (place, draft) in drafts.iter().enumerate() {
-        let name = &draft.joint.name;
-        if let Some(first) = names.insert(name.clone(), place) {
-            let reason = format!("{name:?} is already the name of {}", drafts[first].path);
-            return Err(Flaw { reason, ..draft.name_place.clone() });
-        }
-    }
-    Ok(names)
-}
-
-/// Place in the file of the joint that `field` names, `None` for the base.
-fn lookup(field: &Field, names: &HashMap<String, usize>) -> Result<Option<usize>, Flaw> {
-    match field.text()? {
-        "base" => Ok(None),
-        name => match names.get(name) {
-            Some(place) => Ok(Some(*place)),
-            None => Err(field.flaw(format!("no joint is named {name:?}"))),
-        },
-    }
-}
-
-/// Joints each after its parent; for each joint of the file its end frame and its new place.
-type Resolved = (Vec<Joint>, Vec<Isometry3<f64>>, Vec<usize>);
-
-fn resolve(drafts: Vec<Draft>, names: &HashMap<String, usize>) -> Result<Resolved, Flaw> {
-    let mut parents = Vec::with_capacity(drafts.len());
-    let mut leaders = Vec::with_capacity(drafts.len());
-    for (place, draft) in drafts.iter().enumerate() {
-        parents.push(match &draft.parent {
-            Parent::Above => place.checked_sub(1),
-            Parent::Named(field) => lookup(field, names)?,
-        });
-        leaders.push(match &draft.follows {
-            None => None,
-            Some(follows) => Some(leader(&follows.other, names, &drafts)?),
-        });
-    }
-    for (place, draft) in drafts.iter().enumerate() {
-        if let (Parent::Named(field), Some(cycle)) = (&draft.parent, cycle(place, &parents)) {
-            return Err(field.flaw(format!("parents form a cycle: {}", path(&cycle, &drafts))));
-        }
-        if let (Some(follows), Some(cycle)) = (&draft.follows, cycle(place, &leaders)) {
-            let reason = format!("joints follow each other in a cycle: {}", path(&cycle, &drafts));
-            return Err(follows.other.flaw(reason));
-        }
-    }
-    let order = parents_first(&parents);
-    let mut place_of = vec![0; drafts.len()];
-    for (place, from) in order.iter().enumerate() {
-        place_of[*from] = place;
-    }
-    let ends: Vec<_> = drafts.iter().map(|draft| draft.end).collect();
-    let mut joints: Vec<(usize, Joint)> = Vec::with_capacity(drafts.len());
-    for (from, draft) in drafts.into_iter().enumerate() {
-        let mut joint = draft.joint;
-        joint.parent = parents[from].map(|parent| place_of[parent]);
-        joint.follows = draft.follows.zip(leaders[from]).map(|(follows, leader)| Follows {
-            joint: place_of[leader],
-            ratio: follows.ratio,
-            offset: follows.offset,
-        });
-        joints.push((place_of[from], joint));
-    }
-    joints.sort_by_key(|(place, _)| *place);
-    Ok((joints.into_iter().map(|(_, joint)| joint).collect(), ends, place_of))
-}
-
-/// Place in the file of the joint that a follower names; it must be able to move.
-fn leader(
-    field: &Field,
-    names: &HashMap<String, usize>,
-    drafts: &[Draft],
-) -> Result<usize, Flaw> {
-    match lookup(field, names)? {
-        None => Err(field.flaw("the base does not move")),
-        Some(place) if drafts[place].joint.kind == Kind::Fixed => {
-            Err(field.flaw(format!("joint {:?} is fixed", drafts[place].joint.name)))
-        }
-        Some(place) => Ok(place),
-    }
-}
-
-/// The cycle that starting at `start` and going on to `next` runs through, if it comes back to
-/// `start`.
-fn cycle(start: usize, next: &[Option<usize>]) -> Option<Vec<usize>> {
-    let walk = std::iter::successors(next[start], |place| next[*place]);
-    let until_back: Vec<usize> = walk.take(next.len()).collect();
-    let back = until_back.iter().position(|place| *place == start)?;
-    Some([&[start], &until_back[..=back]].concat())
-}
-
-fn path(cycle: &[usize], drafts: &[Draft]) -> String {
-    let names: Vec<&str> = cycle.iter().map(|place| drafts[*place].joint.name.as_str()).collect();
-    names.join(" -> ")
-}
-
-/// Places of the file, each after its parent, otherwise rising. `parents` has no cycle.
-fn parents_first(parents: &[Option<usize>]) -> Vec<usize> {
-    let mut order: Vec<usize> = Vec::with_capacity(parents.len());
-    while let Some(next) = (0..parents.len()).find(|place| {
-        !order.contains(place) && parents[*place].is_none_or(|parent| order.contains(&parent))
-    }) {
-        order.push(next);
-    }
-    order
+    Ok(Some(FollowsDraft {
+        other,
+        ratio,
+        offset,
+    }))
 }
 
 fn read_tips(
     field: Field,
     names: &HashMap<String, usize>,
-    ends: &[Isometry3<f64>],
-    place_of: &[usize],
+    forest: &Forest,
 ) -> Result<Vec<Tip>, Flaw> {
     let mut tips: Vec<Tip> = Vec::new();
     for item in field.bounded(MAX_TIPS, "tips")? {
@@ -342,8 +271,8 @@ fn read_tips(
         let placement = placement(&mut fields, MAX_LENGTH)?;
         tips.push(Tip {
             name,
-            parent: carrier.map(|from| place_of[from]),
-            placement: carrier.map_or(placement, |from| ends[from] * placement),
+            parent: carrier.map(|from| forest.place_of[from]),
+            placement: carrier.map_or(placement, |from| forest.ends[from] * placement),
         });
     }
     Ok(tips)

@@ -7,11 +7,15 @@
 
 mod dh;
 mod fields;
+mod forest;
 mod machine;
 mod pose;
 mod targets;
+mod tree;
 
-pub use machine::{MAX_ANGLE, MAX_JOINTS, MAX_LENGTH, MAX_MACHINE_BYTES, MAX_TIPS, machine};
+pub use machine::{
+    MAX_ANGLE, MAX_JOINTS, MAX_LENGTH, MAX_MACHINE_BYTES, MAX_RATIO, MAX_TIPS, machine,
+};
 pub use targets::{Line, Lines, MAX_CONES, MAX_LINE_BYTES, target};
 
 use std::fmt;
@@ -65,10 +69,19 @@ struct Flaw {
 
 impl Flaw {
     fn of_file(reason: impl Into<String>) -> Flaw {
-        Flaw { line: None, field: String::new(), reason: reason.into() }
+        Flaw {
+            line: None,
+            field: String::new(),
+            reason: reason.into(),
+        }
     }
 
     fn in_file(self, file: &str) -> Defect {
-        Defect { file: file.to_owned(), line: self.line, field: self.field, reason: self.reason }
+        Defect {
+            file: file.to_owned(),
+            line: self.line,
+            field: self.field,
+            reason: self.reason,
+        }
     }
 }

@@ -37,7 +37,11 @@ pub(super) fn placement(fields: &mut Fields, max_length: f64) -> Result<Isometry
 /// A finite number of size at most `max`.
 pub(super) fn within(field: &Field, max: f64, unit: &str) -> Result<f64, Flaw> {
     let x = field.number()?;
-    if x.abs() <= max { Ok(x) } else { Err(field.flaw(format!("{x} is beyond {max} {unit}"))) }
+    if x.abs() <= max {
+        Ok(x)
+    } else {
+        Err(field.flaw(format!("{x} is beyond {max} {unit}")))
+    }
 }
 
 /// Fixed-axis roll, pitch, yaw: `Rz(yaw) Ry(pitch) Rx(roll)`, angles in multiples of `unit`
@@ -54,7 +58,11 @@ pub(super) fn direction(field: Field) -> Result<Unit<Vector3<f64>>, Flaw> {
     let zero = field.flaw("a direction cannot be zero");
     let vector = field.vector()?;
     let size = vector.amax();
-    if size == 0.0 { Err(zero) } else { Ok(Unit::new_normalize(vector / size)) }
+    if size == 0.0 {
+        Err(zero)
+    } else {
+        Ok(Unit::new_normalize(vector / size))
+    }
 }
 
 /// The rotation nearest to nine numbers, row by row.
@@ -67,8 +75,13 @@ pub(super) fn matrix(field: Field) -> Result<Written, Flaw> {
     let place = field.flaw("");
     let flaw = |reason: String| Flaw { reason, ..place };
     let written = Matrix3::from_row_slice(&field.numbers::<9>()?);
-    let nearest = polar(written).filter(|nearest| (written - nearest).amax() <= MAX_DISTORTION);
-    match nearest {
+    // Written so that an entry that is not a number is far.
+    let near = |nearest: &Matrix3<f64>| {
+        (written - nearest)
+            .iter()
+            .all(|difference| difference.abs() <= MAX_DISTORTION)
+    };
+    match polar(written).filter(near) {
         None => Err(flaw(format!(
             "is not a rotation: not orthonormal within {MAX_DISTORTION}"
         ))),
@@ -85,7 +98,9 @@ pub(super) fn matrix(field: Field) -> Result<Written, Flaw> {
 /// The orthogonal matrix nearest to `matrix`, if that is near one. Eight steps double the digits
 /// from far below one to all that a double holds.
 fn polar(matrix: Matrix3<f64>) -> Option<Matrix3<f64>> {
-    (0..8).try_fold(matrix, |x, _| Some((x + x.try_inverse()?.transpose()) * 0.5))
+    (0..8).try_fold(matrix, |x, _| {
+        Some((x + x.try_inverse()?.transpose()) * 0.5)
+    })
 }
 
 /// The rotation of a quaternion `[w, x, y, z]`, brought to unit length.
@@ -97,10 +112,13 @@ pub(super) fn quaternion(field: Field) -> Result<Written, Flaw> {
     let [w, x, y, z] = field.numbers::<4>()?;
     let written = nalgebra::Quaternion::new(w, x, y, z);
     let distortion = (written.norm() - 1.0).abs();
-    if !(distortion <= MAX_DISTORTION) {
+    if distortion > MAX_DISTORTION {
         let reason = format!("has norm {}, not 1 within {MAX_DISTORTION}", written.norm());
         return Err(Flaw { reason, ..place });
     }
     let rotation = UnitQuaternion::from_quaternion(written).to_rotation_matrix();
-    Ok(Written { rotation, error: 2.0 * distortion })
+    Ok(Written {
+        rotation,
+        error: 2.0 * distortion,
+    })
 }

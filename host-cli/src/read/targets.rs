@@ -6,8 +6,9 @@ use nalgebra::Vector3;
 
 use crate::model::{Cone, Machine, Orientation, Target};
 
-use super::fields::{Field, Fields, from_json};
+use super::fields::{Field, Fields};
 use super::pose::{direction, matrix, quaternion, roll_pitch_yaw};
+use super::tree::from_json;
 use super::{Defect, Flaw};
 
 /// Longest target line, bytes. A target with every field takes some hundred.
@@ -35,7 +36,11 @@ pub struct Lines<R> {
 impl<R: BufRead> Lines<R> {
     /// Lines of `source`, from its current position on.
     pub fn new(source: R) -> Self {
-        Lines { source, number: 0, bytes: 0 }
+        Lines {
+            source,
+            number: 0,
+            bytes: 0,
+        }
     }
 
     /// Bytes read so far.
@@ -55,12 +60,22 @@ impl<R: BufRead> Lines<R> {
             self.number += 1;
             let number = self.number;
             if bytes.len() > MAX_LINE_BYTES {
-                return Ok(Some(Line { number, bytes: None }));
+                return Ok(Some(Line {
+                    number,
+                    bytes: None,
+                }));
             }
-            let start = if number == 1 && bytes.starts_with(b"\xef\xbb\xbf") { 3 } else { 0 };
+            let start = if number == 1 && bytes.starts_with(b"\xef\xbb\xbf") {
+                3
+            } else {
+                0
+            };
             let content = bytes[start..].trim_ascii();
             if !content.is_empty() {
-                return Ok(Some(Line { number, bytes: Some(content.to_vec()) }));
+                return Ok(Some(Line {
+                    number,
+                    bytes: Some(content.to_vec()),
+                }));
             }
         }
         Ok(None)
@@ -124,7 +139,11 @@ pub fn target(line: &Line, file: &str, machine: &Machine) -> Result<Target, (Str
 }
 
 fn parse(line: &Line, machine: &Machine, id: &mut String) -> Result<Target, Flaw> {
-    let flaw = |reason: String| Flaw { line: Some(line.number), field: String::new(), reason };
+    let flaw = |reason: String| Flaw {
+        line: Some(line.number),
+        field: String::new(),
+        reason,
+    };
     let bytes = line
         .bytes
         .as_ref()
@@ -136,8 +155,17 @@ fn parse(line: &Line, machine: &Machine, id: &mut String) -> Result<Target, Flaw
         *id = written.to_owned();
     }
     let mut fields = root.table(&[
-        "id", "tip", "xyz", "xyz_within", "quat", "rotation", "rpy", "rpy_deg", "turn_within",
-        "turn_within_deg", "axis",
+        "id",
+        "tip",
+        "xyz",
+        "xyz_within",
+        "quat",
+        "rotation",
+        "rpy",
+        "rpy_deg",
+        "turn_within",
+        "turn_within_deg",
+        "axis",
     ])?;
     if let Some(field) = fields.take("id") {
         field.text()?;
@@ -146,7 +174,13 @@ fn parse(line: &Line, machine: &Machine, id: &mut String) -> Result<Target, Flaw
     let xyz = fields.need("xyz")?.vector()?;
     let xyz_within = half_widths(fields.need("xyz_within")?)?;
     let orientation = orientation(&mut fields)?;
-    Ok(Target { id: id.clone(), tip, xyz, xyz_within, orientation })
+    Ok(Target {
+        id: id.clone(),
+        tip,
+        xyz,
+        xyz_within,
+        orientation,
+    })
 }
 
 fn tip(fields: &mut Fields, machine: &Machine) -> Result<usize, Flaw> {
@@ -157,10 +191,17 @@ fn tip(fields: &mut Fields, machine: &Machine) -> Result<usize, Flaw> {
         };
     };
     let name = field.text()?;
-    machine.tips.iter().position(|tip| tip.name == name).ok_or_else(|| {
-        let known: Vec<&str> = machine.tips.iter().map(|tip| tip.name.as_str()).collect();
-        field.flaw(format!("no tip is named {name:?}; known: {}", known.join(", ")))
-    })
+    machine
+        .tips
+        .iter()
+        .position(|tip| tip.name == name)
+        .ok_or_else(|| {
+            let known: Vec<&str> = machine.tips.iter().map(|tip| tip.name.as_str()).collect();
+            field.flaw(format!(
+                "no tip is named {name:?}; known: {}",
+                known.join(", ")
+            ))
+        })
 }
 
 fn half_widths(field: Field) -> Result<Vector3<f64>, Flaw> {
@@ -168,7 +209,11 @@ fn half_widths(field: Field) -> Result<Vector3<f64>, Flaw> {
         return Ok(Vector3::repeat(field.not_negative()?));
     }
     let [x, y, z] = field.list_of::<3>()?;
-    Ok(Vector3::new(x.not_negative()?, y.not_negative()?, z.not_negative()?))
+    Ok(Vector3::new(
+        x.not_negative()?,
+        y.not_negative()?,
+        z.not_negative()?,
+    ))
 }
 
 fn orientation(fields: &mut Fields) -> Result<Orientation, Flaw> {
@@ -195,7 +240,10 @@ fn orientation(fields: &mut Fields) -> Result<Orientation, Flaw> {
     let (within, field) = turn_within
         .ok_or_else(|| fields.flaw("turn_within", "missing: an orientation needs turn_within"))?;
     field.not_negative()?;
-    Ok(Orientation::Near { rotation, within: within + error })
+    Ok(Orientation::Near {
+        rotation,
+        within: within + error,
+    })
 }
 
 fn axes(field: Field) -> Result<Orientation, Flaw> {
@@ -203,14 +251,18 @@ fn axes(field: Field) -> Result<Orientation, Flaw> {
         return Ok(Orientation::Axes(vec![cone(field)?]));
     }
     let items = field.bounded(MAX_CONES, "axes")?;
-    Ok(Orientation::Axes(items.into_iter().map(cone).collect::<Result<_, _>>()?))
+    Ok(Orientation::Axes(
+        items.into_iter().map(cone).collect::<Result<_, _>>()?,
+    ))
 }
 
 fn cone(field: Field) -> Result<Cone, Flaw> {
     let mut fields = field.table(&["tip", "base", "within", "within_deg"])?;
     let tip = direction(fields.need("tip")?)?;
     let base = direction(fields.need("base")?)?;
-    let (within, field) = fields.angle("within")?.ok_or_else(|| fields.flaw("within", "missing"))?;
+    let (within, field) = fields
+        .angle("within")?
+        .ok_or_else(|| fields.flaw("within", "missing"))?;
     field.not_negative()?;
     Ok(Cone { tip, base, within })
 }

@@ -50,8 +50,17 @@ impl Folder {
 
     /// Runs the program here with `input` as standard input.
     pub fn run_with(&self, arguments: &[&str], input: &str) -> Run {
-        let mut child = self.command(arguments).stdin(Stdio::piped()).spawn().unwrap();
-        child.stdin.take().unwrap().write_all(input.as_bytes()).unwrap();
+        let mut child = self
+            .command(arguments)
+            .stdin(Stdio::piped())
+            .spawn()
+            .unwrap();
+        child
+            .stdin
+            .take()
+            .unwrap()
+            .write_all(input.as_bytes())
+            .unwrap();
         finish(child)
     }
 }

@@ -28,6 +28,7 @@ fn main() {
         let mut solver = Solver::new(&machine, 0).unwrap();
         solver.rules = Rules(rules);
         solver.candidates = cand;
+        if let Ok(p) = std::env::var("PIVOTS") { solver.pivots = p.parse().unwrap(); }
         let reach: f64 = machine.joints.iter().skip(1).map(|j| j.placement.translation.vector.norm()).sum::<f64>()
             + machine.tips[0].placement.translation.vector.norm();
         let centre = machine.joints[0].placement.translation.vector;

@@ -37,7 +37,14 @@ impl Add for Double {
     type Output = Self;
     fn add(self, other: Self) -> Self {
         let high = sum(self.0, other.0);
-        sorted_sum(high.0, if high.0.is_finite() { high.1 + self.1 + other.1 } else { 0.0 })
+        sorted_sum(
+            high.0,
+            if high.0.is_finite() {
+                high.1 + self.1 + other.1
+            } else {
+                0.0
+            },
+        )
     }
 }
 

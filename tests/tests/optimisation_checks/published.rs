@@ -35,22 +35,36 @@ pub fn read(name: &str) -> System {
         vec![Range::at_least(0); program.c.len()]
     } else {
         let whole = |end: f64| hundredths(end) / 100;
-        let range = |&(lower, upper): &(f64, Option<f64>)| Range { lower: Some(whole(lower)), upper: upper.map(whole) };
+        let range = |&(lower, upper): &(f64, Option<f64>)| Range {
+            lower: Some(whole(lower)),
+            upper: upper.map(whole),
+        };
         program.bounds.iter().map(range).collect()
     };
     let upper = rows(&program.upper_matrix, &program.upper_sides, Range::at_most);
     let equal = rows(&program.equal_matrix, &program.equal_sides, Range::exactly);
-    System { boxes, rows: upper.into_iter().chain(equal).collect() }
+    System {
+        boxes,
+        rows: upper.into_iter().chain(equal).collect(),
+    }
 }
 
 fn rows(matrix: &Matrix, sides: &[f64], range: impl Fn(i64) -> Range) -> Vec<OwnedRow> {
     assert_eq!(matrix.rows, sides.len());
     let row = |(row, &side): (usize, &f64)| {
         let entries = matrix.entries.iter().filter(|entry| entry.0 == row);
-        let terms: Vec<_> = entries.map(|&(_, column, value)| (column, hundredths(value))).collect();
+        let terms: Vec<_> = entries
+            .map(|&(_, column, value)| (column, hundredths(value)))
+            .collect();
         let side = hundredths(side);
-        let divisor = terms.iter().map(|term| term.1).chain([side, 100]).fold(0, greatest_common_divisor);
-        let terms = terms.iter().map(|&(column, value)| (column, i32::try_from(value / divisor).unwrap()));
+        let divisor = terms
+            .iter()
+            .map(|term| term.1)
+            .chain([side, 100])
+            .fold(0, greatest_common_divisor);
+        let terms = terms
+            .iter()
+            .map(|&(column, value)| (column, i32::try_from(value / divisor).unwrap()));
         OwnedRow::new(terms, range(side / divisor))
     };
     sides.iter().enumerate().map(row).collect()
@@ -64,7 +78,11 @@ fn hundredths(value: f64) -> i64 {
 }
 
 fn greatest_common_divisor(a: i64, b: i64) -> i64 {
-    if b == 0 { a.abs() } else { greatest_common_divisor(b, a % b) }
+    if b == 0 {
+        a.abs()
+    } else {
+        greatest_common_divisor(b, a % b)
+    }
 }
 
 /// What the simplex proposes, put straight to the kernel.
@@ -81,11 +99,22 @@ pub fn direct<F: Real>(system: &System) -> Result<Refuted, Unproved> {
 /// belongs to a basis, so its multipliers are rational, often with a small common denominator.
 pub fn common_denominator(system: &System) -> Result<Refuted, Unproved> {
     let simplex = solved::<f64>(system);
-    let least = simplex.conflict().map(|(_, value)| value.abs()).filter(|&value| value > 1e-9).fold(f64::MAX, f64::min);
+    let least = simplex
+        .conflict()
+        .map(|(_, value)| value.abs())
+        .filter(|&value| value > 1e-9)
+        .fold(f64::MAX, f64::min);
     let distance = |factor: f64| {
-        simplex.conflict().map(|(_, value)| value / least * factor).map(|value| (value - value.round()).abs()).fold(0.0, f64::max)
+        simplex
+            .conflict()
+            .map(|(_, value)| value / least * factor)
+            .map(|value| (value - value.round()).abs())
+            .fold(0.0, f64::max)
     };
-    let factor = (1..=1000).map(f64::from).min_by(|&a, &b| distance(a).total_cmp(&distance(b))).unwrap();
+    let factor = (1..=1000)
+        .map(f64::from)
+        .min_by(|&a, &b| distance(a).total_cmp(&distance(b)))
+        .unwrap();
     let mut multipliers = vec![0; system.rows.len()];
     for (row, value) in simplex.conflict() {
         multipliers[row] = (value / least * factor).round() as i32;
@@ -119,25 +148,47 @@ pub fn interior(system: &System) -> Result<Refuted, Unproved> {
         None => Range::between(0, SIZE),
     });
     let rows = columns.iter().map(|column| {
-        let sum = column.iter().map(|&(_, coefficient)| i64::from(coefficient.abs())).sum();
+        let sum = column
+            .iter()
+            .map(|&(_, coefficient)| i64::from(coefficient.abs()))
+            .sum();
         OwnedRow::new(column.iter().copied(), Range::at_least(sum))
     });
-    let dual = System { boxes: boxes.collect(), rows: rows.collect() };
+    let dual = System {
+        boxes: boxes.collect(),
+        rows: rows.collect(),
+    };
     let mut simplex = Box::new(Simplex::<96, 128, Double>::new());
     dual.load(&mut simplex);
-    assert_eq!(simplex.solve(20_000), Outcome::Feasible, "no certificate has room for rounding");
+    assert_eq!(
+        simplex.solve(20_000),
+        Outcome::Feasible,
+        "no certificate has room for rounding"
+    );
     let value = |index| simplex.value(index).unwrap().to_i64();
-    prove_wide(&system, &(0..system.rows.len()).map(value).collect::<Vec<_>>())
+    prove_wide(
+        &system,
+        &(0..system.rows.len()).map(value).collect::<Vec<_>>(),
+    )
 }
 
 /// Upper ends of boxes stated as rows, so that every unknown is only `>= 0`.
 fn bounds_as_rows(system: &System) -> System {
-    let upper = system.boxes.iter().enumerate().filter_map(|(unknown, range)| {
-        assert_eq!(range.lower, Some(0));
-        range.upper.map(|upper| OwnedRow::new([(unknown, 1)], Range::at_most(upper)))
-    });
+    let upper = system
+        .boxes
+        .iter()
+        .enumerate()
+        .filter_map(|(unknown, range)| {
+            assert_eq!(range.lower, Some(0));
+            range
+                .upper
+                .map(|upper| OwnedRow::new([(unknown, 1)], Range::at_most(upper)))
+        });
     let rows = system.rows.iter().cloned().chain(upper).collect();
-    System { boxes: vec![Range::at_least(0); system.boxes.len()], rows }
+    System {
+        boxes: vec![Range::at_least(0); system.boxes.len()],
+        rows,
+    }
 }
 
 /// Multipliers beyond 32 bits, as two digits: of a row, and of the same row times 2^15.
@@ -146,13 +197,28 @@ fn prove_wide(system: &System, multipliers: &[i64]) -> Result<Refuted, Unproved>
     let times = |side: Option<i64>| side.map(|side| side * RADIX);
     let scaled = system.rows.iter().map(|row| {
         let terms = row.terms.iter().map(|term| {
-            (usize::from(term.unknown), i32::try_from(i64::from(term.coefficient) * RADIX).unwrap())
+            (
+                usize::from(term.unknown),
+                i32::try_from(i64::from(term.coefficient) * RADIX).unwrap(),
+            )
         });
-        OwnedRow::new(terms, Range { lower: times(row.range.lower), upper: times(row.range.upper) })
+        OwnedRow::new(
+            terms,
+            Range {
+                lower: times(row.range.lower),
+                upper: times(row.range.upper),
+            },
+        )
     });
-    let wide = System { boxes: system.boxes.clone(), rows: system.rows.iter().cloned().chain(scaled).collect() };
+    let wide = System {
+        boxes: system.boxes.clone(),
+        rows: system.rows.iter().cloned().chain(scaled).collect(),
+    };
     let low = multipliers.iter().map(|multiplier| multiplier % RADIX);
     let high = multipliers.iter().map(|multiplier| multiplier / RADIX);
-    let digits: Vec<i32> = low.chain(high).map(|digit| i32::try_from(digit).unwrap()).collect();
+    let digits: Vec<i32> = low
+        .chain(high)
+        .map(|digit| i32::try_from(digit).unwrap())
+        .collect();
     wide.prove(&digits)
 }

@@ -1,0 +1,200 @@
+//! The linear program of a node: rows chosen lazily, solved in single precision, and refused only
+//! when the integer kernel confirms the multipliers.
+
+use crate::certificate::{Combination, Refuted};
+use crate::fixed::{FRACTION_BITS, Interval, ONE, root_up};
+use crate::propagate::cell::Vector;
+use crate::propagate::{Goal, MOST_FEATURES, MOST_JOINTS, Network, Spans};
+use crate::rows::{Expansion, Form, Linear};
+use crate::target::MOST_CONES;
+use crate::simplex::{Outcome, Simplex};
+use heapless::Vec;
+
+/// Most rows of one linear program.
+pub const MOST_ROWS: usize = 24;
+/// The simplex of a node.
+pub type NodeSimplex = Simplex<MOST_ROWS, MOST_JOINTS>;
+
+/// The program's rows come in groups that are added together: one per feature, and the turn limits.
+struct Rows<'n, 'a> {
+    network: &'n Network<'a>,
+    expansion: Expansion,
+}
+
+impl Rows<'_, '_> {
+    /// Number of groups.
+    fn groups(&self) -> usize {
+        self.network.features().len() + MOST_CONES
+    }
+
+    /// The linear forms of a feature's base coordinates.
+    fn forms(&self, feature: usize) -> [Form; 3] {
+        let views: Vec<Vector, MOST_JOINTS> = (1..=self.network.moved_by(feature))
+            .map(|i| self.network.view(feature, i).1)
+            .collect();
+        let point = self.network.features()[feature].is_point();
+        self.expansion.forms(&self.network.chain(), &views, point)
+    }
+
+    /// The rows of a group; fewer where there are none.
+    fn group(&self, group: usize) -> Vec<Linear, 3> {
+        let features = self.network.features().len();
+        if group >= features {
+            return self.turn_limit(group - features);
+        }
+        if self.network.moved_by(group) == 0 {
+            return Vec::new();
+        }
+        let base = self.network.view(group, 0).1;
+        self.forms(group)
+            .iter()
+            .zip(base)
+            .map(|(form, bound)| form.between(Some(bound.lo as i64), Some(bound.hi as i64)))
+            .collect()
+    }
+
+    /// The angle between wanted and actual orientation, linearised at the middle posture: the
+    /// trace, the sine in the direction of the turn, or the cosine of a cone.
+    fn turn_limit(&self, number: usize) -> Vec<Linear, 3> {
+        let mut rows = Vec::new();
+        match self.network.goal() {
+            Goal::Axes { cones, .. } => {
+                if let Some(cone) = cones.get(number) {
+                    let form = weighted(&self.forms(1 + number), &cone.wanted);
+                    let least = cone.least.lo >> FRACTION_BITS;
+                    let _ = rows.push(form.between(Some(least), None));
+                }
+            }
+            Goal::Near {
+                wanted,
+                least,
+                sine,
+                ..
+            } if number == 0 => {
+                let forms = [1, 2, 3].map(|feature| self.forms(feature));
+                let mut trace = Form::ZERO;
+                for (forms, wanted) in forms.iter().zip(wanted) {
+                    trace.add(&weighted(forms, wanted), ONE as i64 / 2, 0);
+                }
+                // Half the trace, so that coefficients fit.
+                let least = least.lo >> (FRACTION_BITS + 1);
+                let _ = rows.push(trace.between(Some(least), None));
+                if let Some(sine) = sine {
+                    let _ = rows.push(self.turn_sine(&forms, wanted, sine.hi as i64));
+                }
+            }
+            Goal::Near { .. } => {}
+        }
+        rows
+    }
+
+    /// With the turn `w sin` between wanted and actual orientation, half the sum of the cross
+    /// products of their columns: its part along any unit vector is at most the sine.
+    fn turn_sine(&self, forms: &[[Form; 3]; 3], wanted: &[Vector; 3], sine: i64) -> Linear {
+        let mut turn = [0i64; 3];
+        let middle = |i: Interval| (i.lo as i64 + i.hi as i64) / 2;
+        for (forms, wanted) in forms.iter().zip(wanted) {
+            let (a, d) = (wanted.map(middle), [0, 1, 2].map(|k| forms[k].middle().clamp(-(ONE as i64), ONE as i64)));
+            for (k, turn) in turn.iter_mut().enumerate() {
+                let (i, j) = ((k + 1) % 3, (k + 2) % 3);
+                *turn += (a[i] * d[j] - a[j] * d[i]) >> FRACTION_BITS;
+            }
+        }
+        let size = turn.iter().map(|t| (t >> 6) * (t >> 6)).sum::<i64>();
+        let size = root_up(size).max(1);
+        // Not longer than one: rounding towards zero.
+        let along = turn.map(|t| (((t >> 6) << FRACTION_BITS) / size).clamp(-(ONE as i64), ONE as i64));
+        let mut sum = Form::ZERO;
+        for (forms, wanted) in forms.iter().zip(wanted) {
+            let a = wanted.map(middle);
+            for k in 0..3 {
+                let (i, j) = ((k + 1) % 3, (k + 2) % 3);
+                let weight = (along[i] * a[j] - along[j] * a[i]) >> (FRACTION_BITS + 1);
+                sum.add(&forms[k], weight, 8);
+            }
+        }
+        sum.between(None, Some(sine))
+    }
+}
+
+/// The inner product of forms with a known vector.
+fn weighted(forms: &[Form; 3], vector: &Vector) -> Form {
+    let mut sum = Form::ZERO;
+    for (form, v) in forms.iter().zip(vector) {
+        let middle = (v.lo as i64 + v.hi as i64) / 2;
+        sum.add(form, middle, v.width());
+    }
+    sum
+}
+
+/// Tries to show that a propagated node is empty.
+///
+/// `pivots` bounds the work of the simplex. `None` means no proof, never that a posture exists.
+pub fn refute(
+    network: &Network,
+    spans: &Spans,
+    simplex: &mut NodeSimplex,
+    pivots: u32,
+) -> Option<Refuted> {
+    let rows = Rows {
+        network,
+        expansion: Expansion::new(network, spans),
+    };
+    let boxes = rows.expansion.boxes();
+    simplex.start(boxes.iter().copied()).ok()?;
+    let mut used: Vec<(usize, usize), MOST_ROWS> = Vec::new();
+    let mut added = [false; MOST_FEATURES + MOST_CONES];
+    let mut left = pivots;
+    loop {
+        // The most violated group not yet in the program.
+        let mut worst: Option<(f32, usize, Vec<Linear, 3>)> = None;
+        for group in 0..rows.groups() {
+            if added[group] {
+                continue;
+            }
+            let group_rows = rows.group(group);
+            let violation = group_rows
+                .iter()
+                .map(|linear| violation(linear, simplex))
+                .fold(0.0, f32::max);
+            if violation > 0.0 && worst.as_ref().is_none_or(|w| violation > w.0) {
+                worst = Some((violation, group, group_rows));
+            }
+        }
+        let (_, group, group_rows) = worst?;
+        added[group] = true;
+        for (k, linear) in group_rows.iter().enumerate() {
+            used.push((group, k)).ok()?;
+            simplex.add_row(linear.row()).ok()?;
+        }
+        match simplex.solve(left) {
+            Outcome::Feasible => {}
+            Outcome::Infeasible => break,
+            _ => return None,
+        }
+        left = left.saturating_sub(4);
+    }
+    let mut multipliers = [0i32; MOST_ROWS];
+    simplex.multipliers(&mut multipliers);
+    let mut left_overs = [0i64; MOST_JOINTS];
+    let mut sum = Combination::new(left_overs.get_mut(..boxes.len())?);
+    for (&(group, k), &multiplier) in used.iter().zip(&multipliers) {
+        if multiplier != 0 {
+            sum = sum.add(multiplier, rows.group(group).get(k)?.row()).ok()?;
+        }
+    }
+    sum.refute(boxes.iter().copied()).ok()
+}
+
+/// How far the simplex's present point misses a row, in units of the unknowns.
+fn violation(linear: &Linear, simplex: &NodeSimplex) -> f32 {
+    let row = linear.row();
+    let value: f32 = row
+        .terms
+        .iter()
+        .map(|t| t.coefficient as f32 * simplex.value(t.unknown as usize).unwrap_or(0.0))
+        .sum();
+    let below = row.range.lower.map_or(0.0, |l| l as f32 - value);
+    let above = row.range.upper.map_or(0.0, |u| value - u as f32);
+    below.max(above)
+}
