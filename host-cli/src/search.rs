@@ -152,7 +152,7 @@ impl Solver {
         let mut open = Vec::new();
         let mut verdict = Verdict::Unreachable { proof: [0; 32] };
         if network.propagate(&mut root).is_ok() {
-            open.push((network.volume(&root), root));
+            open.push((network.effort(&root), root));
         }
         let mut simplex = NodeSimplex::new();
         while let Some((_, mut spans)) = open.pop() {
@@ -192,9 +192,9 @@ impl Solver {
                     let mut parts: Vec<_> = [lower, upper]
                         .into_iter()
                         .flatten()
-                        .map(|s| (network.volume(&s), s))
+                        .map(|s| (network.effort(&s), s))
                         .collect();
-                    parts.sort_by_key(|p| p.0);
+                    parts.sort_by(|a, b| a.0.total_cmp(&b.0));
                     open.extend(parts);
                 }
             }

@@ -22,17 +22,6 @@ pub enum Branch {
     },
 }
 
-/// Logarithm to base two in steps of a thirty-second, of a width in units.
-fn log2(width: u32) -> i32 {
-    let bits = 31 - (width | 1).leading_zeros() as i32;
-    let fraction = if bits >= 5 {
-        (width >> (bits - 5)) & 31
-    } else {
-        (width << (5 - bits)) & 31
-    };
-    bits * 32 + fraction as i32
-}
-
 impl JointSpan {
     /// A measure of the width that grows with the angle or length: a quarter turn is 2^28.
     pub fn size(&self, motion: Motion) -> u32 {
@@ -80,13 +69,17 @@ impl Direction {
 }
 
 impl Network<'_> {
-    /// The sum of the logarithms of the widths: how much of the joint space a node covers.
-    pub fn volume(&self, spans: &Spans) -> i32 {
-        spans
+    /// The cube of the sum of the widths: what is left to do in a node, roughly.
+    ///
+    /// Single precision proposes where to cut; nothing is refused by it.
+    pub fn effort(&self, spans: &Spans) -> f32 {
+        let sum = spans
             .iter()
             .zip(self.chain.variables)
-            .map(|(span, variable)| log2(span.size(variable.motion)))
-            .sum()
+            .map(|(span, variable)| span.size(variable.motion) as u64)
+            .sum::<u64>() as f32
+            / ONE as f32;
+        sum * sum * sum
     }
 
     /// Cuts a propagated node: tries the `candidates` widest variables and keeps the cut after
@@ -101,7 +94,7 @@ impl Network<'_> {
             .map(|(v, (span, variable))| (span.size(variable.motion), v))
             .collect();
         order.sort_unstable_by(|a, b| b.0.cmp(&a.0).then(a.1.cmp(&b.1)));
-        let mut best: Option<(i32, Branch)> = None;
+        let mut best: Option<(f32, Branch)> = None;
         for &(size, variable) in order.iter().take(candidates) {
             // Narrower than about 2^-26 of a turn, or of the reach, a cut tells nothing.
             if size < 1 << 5 {
@@ -114,18 +107,10 @@ impl Network<'_> {
                 part[variable] = half;
                 self.propagate(&mut part)
                     .ok()
-                    .map(|()| (self.volume(&part), part))
+                    .map(|()| (self.effort(&part), part))
             };
             let (lower, upper) = (part(low), part(high));
-            let score = match (&lower, &upper) {
-                (None, None) => return Branch::Cut { variable, lower: None, upper: None },
-                (Some((v, _)), None) | (None, Some((v, _))) => *v,
-                (Some((a, _)), Some((b, _))) => {
-                    // The logarithm of the sum, roughly.
-                    let (a, b) = (*a.max(b), *a.min(b));
-                    a + (32 - (a - b)).max(0)
-                }
-            };
+            let score = [&lower, &upper].into_iter().flatten().map(|part| part.0).sum();
             if best.as_ref().is_none_or(|(least, _)| score < *least) {
                 best = Some((
                     score,
