@@ -68,6 +68,7 @@ impl Rows<'_, '_> {
             Goal::Near {
                 wanted,
                 least,
+                cosine,
                 sine,
                 ..
             } if number == 0 => {
@@ -79,7 +80,8 @@ impl Rows<'_, '_> {
                 // Half the trace, so that coefficients fit.
                 let least = least.lo >> (FRACTION_BITS + 1);
                 let _ = rows.push(trace.between(Some(least), None));
-                if let Some(sine) = sine {
+                // Beyond a quarter turn the sine bounds nothing.
+                if cosine.lo >= 0 {
                     let _ = rows.push(self.turn_sine(&forms, wanted, sine.hi as i64));
                 }
             }

@@ -1,6 +1,6 @@
 //! One feature seen from one joint, and the rule of a turning or sliding joint.
 
-use crate::fixed::{Arc, Empty, Interval, ONE_SQUARED, Product};
+use crate::fixed::{Arc, Empty, Interval, ONE_SQUARED, Product, root_down, root_up};
 
 /// A vector of intervals.
 pub type Vector = [Interval; 3];
@@ -134,7 +134,7 @@ fn meet_radius(own: &mut [Interval], radius: Product) -> Result<bool, Empty> {
 ///
 /// Equal third components, equal lengths, the rotation of the plane both ways, cosine and sine
 /// from the dot and cross product, and the angle from the two directions.
-pub fn turn(cell: &mut Cell, span: &mut JointSpan) -> Result<Changed, Empty> {
+pub fn turn(cell: &mut Cell, span: &mut JointSpan, sector: bool) -> Result<Changed, Empty> {
     let mut changed = Changed::default();
     let [mut wx, mut wy, mut wz] = cell.before;
     let [mut vx, mut vy, mut vz] = cell.after;
@@ -172,6 +172,23 @@ pub fn turn(cell: &mut Cell, span: &mut JointSpan) -> Result<Changed, Empty> {
         let cross = wy.times(vx).minus(wx.times(vy));
         if let (Some(cosine), Some(sine)) = (dot.over(radius), cross.over(radius)) {
             changed.span |= span.meet_circle(cosine, sine)?;
+        }
+    }
+    if sector && !span.arc.full {
+        let reach = Interval::clamped(root_down(radius.lo), root_up(radius.hi));
+        if let Some((lo, hi)) = Arc::of_box(vx, vy) {
+            let arc = Arc::new(lo, hi).normalised().plus(span.arc);
+            if !arc.full {
+                changed.before |= wx.meet(reach.times(arc.cosine()).round(0))?;
+                changed.before |= wy.meet(reach.times(arc.sine()).round(0))?;
+            }
+        }
+        if let Some((lo, hi)) = Arc::of_box(wx, wy) {
+            let arc = Arc::new(lo, hi).normalised().plus(span.arc.negate());
+            if !arc.full {
+                changed.after |= vx.meet(reach.times(arc.cosine()).round(0))?;
+                changed.after |= vy.meet(reach.times(arc.sine()).round(0))?;
+            }
         }
     }
     if let (Some(to), Some(from)) = (Arc::of_box(wx, wy), Arc::of_box(vx, vy)) {

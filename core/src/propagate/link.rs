@@ -1,6 +1,7 @@
 //! The rules of rigid links: between two joints, and from the tip back to the base.
 
 use super::cell::{Cell, Vector};
+use super::start::spread_product;
 use crate::fixed::{Empty, Interval, Product};
 use crate::machine::Placement;
 
@@ -151,6 +152,52 @@ pub fn close(
     Ok((at_base, at_tip))
 }
 
+/// The same by the angle between wanted and actual orientation instead of the axes' boxes.
+///
+/// Each coordinate is the inner product of a vector with a direction known to within the angle.
+pub fn close_within(
+    base: &mut Cell,
+    local: &mut Cell,
+    wanted: &[Vector; 3],
+    (cosine, sine): (Interval, Interval),
+    tip: Option<&Vector>,
+) -> Result<(bool, bool), Empty> {
+    let mut at_base = false;
+    let mut at_tip = false;
+    let relative = match tip {
+        Some(tip) => [0, 1, 2].map(|k| base.after[k].less(tip[k])),
+        None => base.after,
+    };
+    let square = if tip.is_some() {
+        local.square_before.meet(
+            relative[0]
+                .square()
+                .plus(relative[1].square())
+                .plus(relative[2].square()),
+        )?;
+        local.square_before
+    } else {
+        base.square_after
+    };
+    for k in 0..3 {
+        let nominal = dot(&wanted[k], &relative);
+        at_tip |= local.before[k].meet(spread_product(nominal, square, cosine, sine))?;
+    }
+    for j in 0..3 {
+        let row = [wanted[0][j], wanted[1][j], wanted[2][j]];
+        let nominal = dot(&row, &local.before);
+        let own = spread_product(nominal, square, cosine, sine);
+        at_base |= match tip {
+            Some(tip) => base.after[j].meet(Interval::clamped(
+                own.lo as i64 + tip[j].lo as i64,
+                own.hi as i64 + tip[j].hi as i64,
+            ))?,
+            None => base.after[j].meet(own)?,
+        };
+    }
+    Ok((at_base, at_tip))
+}
+
 /// The rule that closes the loop when the tip's orientation is free: the distance to the tip.
 pub fn close_at_distance(
     base: &mut Cell,
@@ -231,6 +278,39 @@ pub fn meet_least<const N: usize>(
         // is too small to divide by.
         let mut none = Product { lo: least.lo, hi: least.hi.max(least.lo) };
         none.meet(Product { lo: most, hi: most })?;
+    }
+    Ok(changed)
+}
+
+/// Tightens two vectors and their inner product by each other.
+///
+/// Returns whether (first, second, product) changed.
+pub fn meet_dot(
+    a: &mut Vector,
+    b: &mut Vector,
+    inner: &mut Interval,
+) -> Result<(bool, bool, bool), Empty> {
+    let parts = [0, 1, 2].map(|k| a[k].times(b[k]));
+    let sum = parts[0].plus(parts[1]).plus(parts[2]);
+    let inner_changed = inner.meet(sum.round(0))?;
+    let wanted = inner.widen();
+    let mut changed = (false, false, inner_changed);
+    // Nothing to gain unless the product is known better than the vectors tell.
+    if wanted.lo - sum.lo <= (sum.hi - sum.lo) >> 4 && sum.hi - wanted.hi <= (sum.hi - sum.lo) >> 4 {
+        return Ok(changed);
+    }
+    for k in 0..3 {
+        let others = parts[(k + 1) % 3].plus(parts[(k + 2) % 3]);
+        let part = wanted.minus(others);
+        if part.lo <= parts[k].lo && part.hi >= parts[k].hi {
+            continue;
+        }
+        if let Some(value) = part.over_interval(b[k]) {
+            changed.0 |= a[k].meet(value)?;
+        }
+        if let Some(value) = part.over_interval(a[k]) {
+            changed.1 |= b[k].meet(value)?;
+        }
     }
     Ok(changed)
 }

@@ -39,6 +39,9 @@ impl Rules {
     /// Equalities between two features seen from each other.
     pub const MUTUAL: Rules = Rules(4);
 
+    /// Inner products of directions seen from the base.
+    pub const PAIRS: Rules = Rules(8);
+
     /// Whether all of `other` are among these.
     pub fn has(self, other: Rules) -> bool {
         self.0 & other.0 == other.0
@@ -131,6 +134,14 @@ impl<'a> Network<'a> {
             if self.rules.has(Rules::MUTUAL) {
                 self.mutual()?;
             }
+            if self.rules.has(Rules::PAIRS) {
+                self.pairs(0)?;
+            }
+            if self.rules.has(Rules(16)) {
+                for i in 1..self.stride() - 1 {
+                    self.pairs(i)?;
+                }
+            }
             self.share(spans)?;
             if !any {
                 break;
@@ -201,7 +212,7 @@ impl<'a> Network<'a> {
         cell.pending &= !Cell::JOINT;
         let span = &mut self.joints[i - 1];
         let changed = match self.chain.joints[i - 1].motion {
-            Motion::Turn => cell::turn(cell, span)?,
+            Motion::Turn => cell::turn(cell, span, self.rules.has(Rules(256)))?,
             Motion::Slide => cell::slide(cell, span, self.features[feature].is_point())?,
         };
         if changed.before {
@@ -254,7 +265,21 @@ impl<'a> Network<'a> {
         let (left, right) = self.cells.split_at_mut(last);
         let (base, local) = (&mut left[first], &mut right[0]);
         let (at_base, at_tip) = match self.goal {
-            Goal::Near { .. } => link::close(base, local, &axes, kind.is_point().then_some(&tip))?,
+            Goal::Near {
+                wanted,
+                cosine,
+                sine,
+                ..
+            } => {
+                let tip = kind.is_point().then_some(&tip);
+                let mut changed = link::close(base, local, &axes, tip)?;
+                if self.rules.has(Rules(128)) {
+                    let more = link::close_within(base, local, wanted, (*cosine, *sine), tip)?;
+                    changed.0 |= more.0;
+                    changed.1 |= more.1;
+                }
+                changed
+            }
             Goal::Axes { cones, .. } if kind.is_point() => match cones.first() {
                 Some(cone) => link::close_about_axis(base, local, &tip, &cone.in_tip, &axes[0])?,
                 None => link::close_at_distance(base, local, &tip)?,
@@ -339,6 +364,40 @@ impl<'a> Network<'a> {
                         }
                     }
                     _ => {}
+                }
+            }
+        }
+        Ok(())
+    }
+
+    /// Two features seen from the base: the angle between two directions, the distance between
+    /// two points, the height of a point over another along an axis, all known from the view of
+    /// a joint.
+    fn pairs(&mut self, frame: usize) -> Result<(), Empty> {
+        let stride = self.stride();
+        for p in 0..self.features.len() {
+            let Feature::Axis(a) = self.features[p] else {
+                continue;
+            };
+            for q in 0..self.features.len() {
+                // Each pair of axes once, every other direction with every axis.
+                let other = self.features[q];
+                if q == p || other.is_point() || matches!(other, Feature::Axis(_)) && q < p {
+                    continue;
+                }
+                let view = q * stride + a as usize;
+                let (first, second) = (p * stride + frame, q * stride + frame);
+                let (mut one, mut two) = (self.cells[first].after, self.cells[second].after);
+                let mut inner = self.cells[view].after[2];
+                let changed = link::meet_dot(&mut one, &mut two, &mut inner)?;
+                self.cells[first].after = one;
+                self.cells[second].after = two;
+                self.cells[view].after[2] = inner;
+                for (changed, at) in [(changed.0, first), (changed.1, second), (changed.2, view)] {
+                    if changed {
+                        self.cells[at].pending |= Cell::JOINT;
+                        self.cells[at + 1].pending |= Cell::LINK;
+                    }
                 }
             }
         }

@@ -40,8 +40,10 @@ pub enum Goal {
         wanted: [Vector; 3],
         /// Least trace of the product of the wanted orientation's transpose and the actual one.
         least: Product,
-        /// Greatest sine of the turn between them, when that is below a quarter turn.
-        sine: Option<Interval>,
+        /// Cosine of the greatest turn between them.
+        cosine: Interval,
+        /// Its sine.
+        sine: Interval,
     },
 }
 
@@ -64,6 +66,28 @@ fn spread(component: Interval, cosine: Interval, sine: Interval) -> Interval {
         lo: -upper(-component.lo),
         hi: upper(component.hi),
     }
+}
+
+/// Bounds of `d . x` for every unit vector `d` within the given angle of a vector whose inner
+/// product with `x` lies in `nominal`; `square` bounds the squared length of `x`.
+pub(super) fn spread_product(
+    nominal: Product,
+    square: Product,
+    cosine: Interval,
+    sine: Interval,
+) -> Interval {
+    let length = root_up(square.hi).min(ONE as i64);
+    let upper = |n: i64| {
+        // n / 2^30 against length * cosine.
+        let n = -((-n) >> 30);
+        if n >= (length * cosine.lo as i64) >> 30 {
+            return length;
+        }
+        let across = root_up(square.hi - n * n).min(ONE as i64);
+        let (near, far) = (n * cosine.lo as i64, n * cosine.hi as i64);
+        (-((-(near.max(far) + across * sine.hi as i64)) >> 30)).min(length)
+    };
+    Interval::clamped(-upper(-nominal.lo), upper(nominal.hi))
 }
 
 /// Cosine and sine of an angle from the sine of its half.
@@ -157,7 +181,8 @@ impl Goal {
                     axes: wanted.map(|column| column.map(|entry| spread(entry, cosine, sine))),
                     wanted,
                     least: cosine.widen().double().plus(Interval::point(ONE).widen()),
-                    sine: (cosine.lo >= 0).then_some(sine),
+                    cosine,
+                    sine,
                 }
             }
         }
@@ -195,14 +220,14 @@ impl<'a> Network<'a> {
             let number = i as u8 + 1;
             // A shorter offset than a thousandth of a thousandth of the reach tells nothing.
             let offset = joint.placement.square.hi > ONE_SQUARED >> 40;
-            if rules.has(Rules::ORIGINS) && offset && i > 0 {
+            if rules.has(Rules::ORIGINS) && (offset || i == 0) && (i > 0 || closed && rules.has(Rules(32))) {
                 push(Feature::Origin(number));
             }
         }
         for (i, joint) in chain.joints.iter().enumerate() {
             let number = i as u8 + 1;
             let parallel = joint.placement.rotation[2][2].unsigned_abs() == ONE as u32;
-            if rules.has(Rules::AXES) && closed && !parallel && i > 0 {
+            if rules.has(Rules::AXES) && closed && (!parallel || i == 0) && (i > 0 || rules.has(Rules(64))) {
                 push(Feature::Axis(number));
             }
         }
