@@ -1,7 +1,7 @@
 //! The rules of rigid links: between two joints, and from the tip back to the base.
 
 use super::cell::{Cell, Vector};
-use super::start::spread_product;
+use super::start::{GoalCone, spread_product};
 use crate::fixed::{Empty, Interval, Product};
 use crate::machine::Placement;
 
@@ -242,6 +242,35 @@ pub fn close_about_axis(
     }
     let (near, far) = close_at_distance(base, local, tip)?;
     Ok((at_base | near, far))
+}
+
+/// The same by the cone's angle: the feature's part along the tip axis equals its part along a
+/// direction that is known to within the angle.
+pub fn close_within_cone(
+    base: &mut Cell,
+    local: &mut Cell,
+    cone: &GoalCone,
+    tip: &Vector,
+) -> Result<(bool, bool), Empty> {
+    let square = local.square_before;
+    let mut relative = [0, 1, 2].map(|k| base.after[k].less(tip[k]));
+    let mut along = dot(&cone.in_tip, &local.before).round(0);
+    let nominal = dot(&cone.wanted, &relative);
+    along.meet(spread_product(nominal, square, cone.cosine, cone.sine))?;
+    let mut fixed = cone.in_tip;
+    let (at_tip, ..) = meet_dot(&mut local.before, &mut fixed, &mut along)?;
+    let mut nominal = spread_product(along.widen(), square, cone.cosine, cone.sine);
+    let mut fixed = cone.wanted;
+    let mut at_base = false;
+    if meet_dot(&mut relative, &mut fixed, &mut nominal)?.0 {
+        for k in 0..3 {
+            at_base |= base.after[k].meet(Interval::clamped(
+                tip[k].lo as i64 + relative[k].lo as i64,
+                tip[k].hi as i64 + relative[k].hi as i64,
+            ))?;
+        }
+    }
+    Ok((at_base, at_tip))
 }
 
 /// Tightens `own` by `sum_k fixed[k] . own[k] >= least`.

@@ -36,11 +36,16 @@ impl Rules {
     pub const ORIGINS: Rules = Rules(1);
     /// Joint axes as features.
     pub const AXES: Rules = Rules(2);
+    /// The first joint's origin and axis as features, seen back from the tip.
+    pub const BASE: Rules = Rules(4);
     /// Equalities between two features seen from each other.
-    pub const MUTUAL: Rules = Rules(4);
-
+    pub const MUTUAL: Rules = Rules(8);
     /// Inner products of directions seen from the base.
-    pub const PAIRS: Rules = Rules(8);
+    pub const PAIRS: Rules = Rules(16);
+    /// Closing the loop by the angle to the wanted orientation, not only by the axes' boxes.
+    pub const SPREAD: Rules = Rules(32);
+    /// Turning by direction and radius, not only by cosine and sine.
+    pub const SECTOR: Rules = Rules(64);
 
     /// Whether all of `other` are among these.
     pub fn has(self, other: Rules) -> bool {
@@ -135,12 +140,7 @@ impl<'a> Network<'a> {
                 self.mutual()?;
             }
             if self.rules.has(Rules::PAIRS) {
-                self.pairs(0)?;
-            }
-            if self.rules.has(Rules(16)) {
-                for i in 1..self.stride() - 1 {
-                    self.pairs(i)?;
-                }
+                self.pairs()?;
             }
             self.share(spans)?;
             if !any {
@@ -212,7 +212,7 @@ impl<'a> Network<'a> {
         cell.pending &= !Cell::JOINT;
         let span = &mut self.joints[i - 1];
         let changed = match self.chain.joints[i - 1].motion {
-            Motion::Turn => cell::turn(cell, span, self.rules.has(Rules(256)))?,
+            Motion::Turn => cell::turn(cell, span, self.rules.has(Rules::SECTOR))?,
             Motion::Slide => cell::slide(cell, span, self.features[feature].is_point())?,
         };
         if changed.before {
@@ -273,7 +273,7 @@ impl<'a> Network<'a> {
             } => {
                 let tip = kind.is_point().then_some(&tip);
                 let mut changed = link::close(base, local, &axes, tip)?;
-                if self.rules.has(Rules(128)) {
+                if self.rules.has(Rules::SPREAD) {
                     let more = link::close_within(base, local, wanted, (*cosine, *sine), tip)?;
                     changed.0 |= more.0;
                     changed.1 |= more.1;
@@ -281,7 +281,16 @@ impl<'a> Network<'a> {
                 changed
             }
             Goal::Axes { cones, .. } if kind.is_point() => match cones.first() {
-                Some(cone) => link::close_about_axis(base, local, &tip, &cone.in_tip, &axes[0])?,
+                Some(cone) => {
+                    let mut changed =
+                        link::close_about_axis(base, local, &tip, &cone.in_tip, &axes[0])?;
+                    if self.rules.has(Rules::SPREAD) {
+                        let more = link::close_within_cone(base, local, cone, &tip)?;
+                        changed.0 |= more.0;
+                        changed.1 |= more.1;
+                    }
+                    changed
+                }
                 None => link::close_at_distance(base, local, &tip)?,
             },
             _ => (false, false),
@@ -370,10 +379,9 @@ impl<'a> Network<'a> {
         Ok(())
     }
 
-    /// Two features seen from the base: the angle between two directions, the distance between
-    /// two points, the height of a point over another along an axis, all known from the view of
-    /// a joint.
-    fn pairs(&mut self, frame: usize) -> Result<(), Empty> {
+    /// Two directions seen from the base: the angle between them is known from the joint whose
+    /// axis one of them is.
+    fn pairs(&mut self) -> Result<(), Empty> {
         let stride = self.stride();
         for p in 0..self.features.len() {
             let Feature::Axis(a) = self.features[p] else {
@@ -386,7 +394,7 @@ impl<'a> Network<'a> {
                     continue;
                 }
                 let view = q * stride + a as usize;
-                let (first, second) = (p * stride + frame, q * stride + frame);
+                let (first, second) = (p * stride, q * stride);
                 let (mut one, mut two) = (self.cells[first].after, self.cells[second].after);
                 let mut inner = self.cells[view].after[2];
                 let changed = link::meet_dot(&mut one, &mut two, &mut inner)?;

@@ -18,6 +18,10 @@ pub struct GoalCone {
     pub wanted: Vector,
     /// Least inner product of the axis with it.
     pub least: Product,
+    /// Cosine of the cone's angle.
+    pub cosine: Interval,
+    /// Its sine.
+    pub sine: Interval,
 }
 
 /// A target prepared for propagation.
@@ -166,6 +170,8 @@ impl Goal {
                             in_base: rounded(cone.base).map(|b| spread(b, cosine, sine)),
                             wanted: rounded(cone.base),
                             least: cosine.widen(),
+                            cosine,
+                            sine,
                         }
                     })
                     .collect(),
@@ -220,14 +226,17 @@ impl<'a> Network<'a> {
             let number = i as u8 + 1;
             // A shorter offset than a thousandth of a thousandth of the reach tells nothing.
             let offset = joint.placement.square.hi > ONE_SQUARED >> 40;
-            if rules.has(Rules::ORIGINS) && (offset || i == 0) && (i > 0 || closed && rules.has(Rules(32))) {
+            if rules.has(if i == 0 { Rules::BASE } else { Rules::ORIGINS })
+                && (if i == 0 { closed } else { offset }) {
                 push(Feature::Origin(number));
             }
         }
         for (i, joint) in chain.joints.iter().enumerate() {
             let number = i as u8 + 1;
             let parallel = joint.placement.rotation[2][2].unsigned_abs() == ONE as u32;
-            if rules.has(Rules::AXES) && closed && (!parallel || i == 0) && (i > 0 || rules.has(Rules(64))) {
+            if rules.has(if i == 0 { Rules::BASE } else { Rules::AXES })
+                && closed
+                && (!parallel || i == 0) {
                 push(Feature::Axis(number));
             }
         }
