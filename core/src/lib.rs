@@ -10,3 +10,5 @@ pub mod simplex;
 pub mod target;
 pub mod relaxation;
 pub mod rows;
+pub mod screen;
+pub mod record;

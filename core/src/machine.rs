@@ -76,6 +76,28 @@ pub struct Machine<const N: usize> {
     pub exponent: i8,
 }
 
+impl<const N: usize> Machine<N> {
+    /// The chain without its capacity.
+    pub fn chain(&self) -> Chain<'_> {
+        Chain {
+            joints: &self.joints,
+            variables: &self.variables,
+            tip: &self.tip,
+        }
+    }
+}
+
+/// The chain of a machine, whatever its capacity.
+#[derive(Clone, Copy)]
+pub struct Chain<'a> {
+    /// Joints from base to tip.
+    pub joints: &'a [Joint],
+    /// Variables that drive them.
+    pub variables: &'a [Variable],
+    /// The tip in the frame after the last joint.
+    pub tip: &'a Placement,
+}
+
 impl Joint {
     /// Whether the joint's value is the variable itself.
     pub fn is_plain(&self) -> bool {

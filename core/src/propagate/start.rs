@@ -203,7 +203,7 @@ impl Goal {
 
 impl<'a> Network<'a> {
     /// Chooses the features of a chain under a target. `cells` must hold
-    /// [`Network::cells`]` (joints)` cells; with fewer, features are left out.
+    /// [`cells_for`](crate::screen::cells_for) cells; with fewer, features are left out.
     pub fn new(
         chain: Chain<'a>,
         goal: &'a Goal,

@@ -1,9 +1,9 @@
 //! From a target line to what is said of it.
 
-use crate::model::{Machine, Target};
+use crate::model::Machine;
 use crate::pack::PackError;
 use crate::read::{self, Defect, Line};
-use crate::search::{Decision, Solver};
+use crate::search::{Decision, Screening, Solver};
 
 use super::arguments::Task;
 
@@ -22,23 +22,8 @@ pub(super) struct Answer {
 
 pub(super) enum Outcome {
     Decided(Decision),
-    Screened { splits: u32, screening: Screening },
+    Screened { splits: u16, screening: Screening },
     Wrong(Defect),
-}
-
-/// What the controller would answer.
-pub(super) enum Screening {
-    Refused { record: Vec<u8> },
-    Passed { reason: &'static str },
-}
-
-fn screen(solver: &Solver, target: &Target, splits: u32) -> Screening {
-    match solver.refused(target, splits as usize) {
-        (true, _) => Screening::Refused { record: Vec::new() },
-        (false, _) => Screening::Passed {
-            reason: "not shown to be out of reach",
-        },
-    }
 }
 
 impl<'a> Solvers<'a> {
@@ -83,7 +68,7 @@ impl<'a> Solvers<'a> {
             (Ok(solver), Task::Decide { nodes }) => Outcome::Decided(solver.decide(&target, nodes)),
             (Ok(solver), Task::Screen { splits }) => Outcome::Screened {
                 splits,
-                screening: screen(solver, &target, splits),
+                screening: solver.screen(&target, splits),
             },
         };
         Answer {

@@ -1,8 +1,9 @@
 //! What the user may write on the command line.
 
-use std::num::{NonZeroU32, NonZeroU64, NonZeroUsize};
+use std::num::{NonZeroU64, NonZeroUsize};
 use std::path::PathBuf;
 
+use balk_core::screen::MOST_SPLITS;
 use clap::builder::styling::{AnsiColor, Styles};
 use clap::error::ErrorKind;
 use clap::{Args, CommandFactory, Parser, Subcommand};
@@ -60,9 +61,9 @@ pub(super) enum Command {
     Screen {
         #[command(flatten)]
         inputs: Inputs,
-        /// Intervals of joint positions to look at separately; 1 is the coarsest check
-        #[arg(long, value_name = "N", default_value_t = NonZeroU32::MIN)]
-        splits: NonZeroU32,
+        /// Parts the joint ranges may be cut into; 1 is the coarsest check
+        #[arg(long, value_name = "N", default_value_t = 1, value_parser = clap::value_parser!(u16).range(1..=MOST_SPLITS as i64))]
+        splits: u16,
     },
 }
 
@@ -95,7 +96,7 @@ pub(super) struct Job {
 #[derive(Clone, Copy, Debug)]
 pub(super) enum Task {
     Decide { nodes: u64 },
-    Screen { splits: u32 },
+    Screen { splits: u16 },
 }
 
 impl From<Command> for Job {
@@ -108,7 +109,7 @@ impl From<Command> for Job {
             Command::Screen { inputs, splits } => Job {
                 inputs,
                 task: Task::Screen {
-                    splits: splits.get(),
+                    splits,
                 },
             },
         }

@@ -13,7 +13,8 @@ use crate::model::{Kind, Machine};
 use crate::read::{Defect, printable};
 use crate::search::{Decision, Verdict};
 
-use super::answer::{Answer, Outcome, Screening};
+use super::answer::{Answer, Outcome};
+use crate::search::Screening;
 use super::arguments::CAUTION;
 use super::tally::{Tally, Word};
 
@@ -140,7 +141,7 @@ struct Record<'a> {
     #[serde(skip_serializing_if = "Option::is_none")]
     proof: Option<String>,
     #[serde(skip_serializing_if = "Option::is_none")]
-    splits: Option<u32>,
+    splits: Option<u16>,
     #[serde(skip_serializing_if = "Option::is_none")]
     record: Option<String>,
     #[serde(skip_serializing_if = "Option::is_none")]

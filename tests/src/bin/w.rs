@@ -33,10 +33,10 @@ fn main() {
                 _ => (0.001, Orientation::Axes(vec![Cone { tip: Vector3::z_axis(), base: Unit::new_normalize(r * Vector3::z()), within: 0.01 }])),
             };
             let target = Target { id: id.to_string(), tip: 0, xyz: centre + p * reach, xyz_within: Vector3::repeat(within), orientation };
-            let d = solver.decide(&target, 600);
+            let d = solver.decide(&target, 3000);
             if let Verdict::Undecided { .. } = d.verdict {
                 let mut best = f64::MAX; let mut hits = 0; let mut bv = vec![];
-                for _ in 0..3000 {
+                for _ in 0..1000 {
                     let mut v: Vec<f64> = linkage.limits.iter().map(|&[lo, hi]| rng2.random_range(lo..hi)).collect();
                     let s = linkage.seek(&target, &mut v);
                     if s < 1e-18 { hits += 1 }

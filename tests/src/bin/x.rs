@@ -26,9 +26,9 @@ fn main() {
         let file = format!("tests/machines/{name}.toml");
         let machine = balk::read::machine(&std::fs::read(&file).unwrap(), &file).unwrap();
         let mut solver = Solver::new(&machine, 0).unwrap();
-        solver.rules = Rules(rules);
-        solver.candidates = cand;
-        if let Ok(p) = std::env::var("PIVOTS") { solver.pivots = p.parse().unwrap(); }
+        solver.options.rules = Rules(rules);
+        solver.options.candidates = cand as u8;
+        if let Ok(p) = std::env::var("PIVOTS") { solver.options.pivots = p.parse().unwrap(); }
         let reach: f64 = machine.joints.iter().skip(1).map(|j| j.placement.translation.vector.norm()).sum::<f64>()
             + machine.tips[0].placement.translation.vector.norm();
         let centre = machine.joints[0].placement.translation.vector;
@@ -59,10 +59,9 @@ fn main() {
             if k == 1 {
                 for (i, s) in splits.iter().enumerate() {
                     let clock = std::time::Instant::now();
-                    let (r, rs) = solver.refused(&target, *s);
+                    let r = matches!(solver.screen(&target, *s), Screening::Refused { .. });
                     rtime[i] += clock.elapsed().as_secs_f64() * 1e3;
                     caught[i] += r as usize;
-                    rounds[i] += rs as u64;
                 }
             }
         }

@@ -1,0 +1,292 @@
+//! The controller's entry: refuse a target with proof, or let it pass with the reason.
+
+use crate::fixed::Empty;
+use crate::machine::Machine;
+use crate::propagate::cell::{Cell, JointSpan};
+use crate::propagate::{Branch, Chain, Goal, MOST_JOINTS, Network, Rules, Spans};
+use crate::relaxation::{NodeSimplex, Relaxed, relax};
+use crate::target::Target;
+use heapless::Vec;
+
+/// Most steps of the tree of one refusal: twice the most splits.
+pub const MOST_STEPS: usize = 128;
+/// Most parts the joint space is ever cut into on a controller.
+pub const MOST_SPLITS: u16 = (MOST_STEPS / 2) as u16;
+
+/// What a screening may spend, and by which rules.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub struct Options {
+    /// Parts the joint space may be cut into: 1 is a single interval per joint. At most
+    /// [`MOST_SPLITS`].
+    pub splits: u16,
+    /// Pivots of the simplex at each part; 0 leaves the linear program out.
+    pub pivots: u16,
+    /// Variables tried before each cut.
+    pub candidates: u8,
+    /// Rules of propagation; all of them but in ablations.
+    pub rules: Rules,
+}
+
+impl Default for Options {
+    fn default() -> Self {
+        Options {
+            splits: 1,
+            pivots: 60,
+            candidates: 2,
+            rules: Rules::ALL,
+        }
+    }
+}
+
+/// Working memory of a screening: no other is used but the stack.
+///
+/// `CELLS` bounds joints times features ([`cells_for`]), `PARTS` the open parts of the joint
+/// space.
+pub struct Workspace<const CELLS: usize, const PARTS: usize> {
+    cells: [Cell; CELLS],
+    parts: Vec<Part, PARTS>,
+    steps: Vec<Step, MOST_STEPS>,
+    simplex: NodeSimplex,
+}
+
+/// Cells a chain of that many moving joints needs.
+pub const fn cells_for(joints: usize) -> usize {
+    (joints + 2) * (2 * joints + 4)
+}
+
+/// Working memory for up to four joints.
+pub type Workspace4 = Workspace<{ cells_for(4) }, 16>;
+/// Working memory for up to six joints.
+pub type Workspace6 = Workspace<{ cells_for(6) }, 16>;
+/// Working memory for up to seven joints.
+pub type Workspace7 = Workspace<{ cells_for(7) }, 16>;
+/// Working memory for up to eight joints.
+pub type Workspace8 = Workspace<{ cells_for(8) }, 16>;
+
+/// A part of the joint space waiting to be shown empty.
+enum Part {
+    /// Already shown, when it was cut off.
+    Closed(Empty),
+    /// Still to be looked at.
+    Open(Spans),
+}
+
+/// One step of a refusal's tree, in the order of a walk that takes the lower part first.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub enum Step {
+    /// The part is empty by propagation.
+    Bounds,
+    /// The span of this variable is cut in its middle.
+    Cut(u8),
+    /// The part is empty by a combination of rows.
+    Rows,
+}
+
+/// Proof that no posture within limits meets the target.
+///
+/// Only [`screen`] makes one, after integer arithmetic has shown every part of the joint space
+/// empty:
+///
+/// ```compile_fail,E0451
+/// let forged = balk_core::screen::Refusal { steps: &[], _only_made_here: () };
+/// ```
+#[derive(Debug)]
+#[must_use]
+pub struct Refusal<'w> {
+    steps: &'w [Step],
+    _only_made_here: (),
+}
+
+impl Refusal<'_> {
+    /// The tree of cuts and the way each part was shown empty.
+    pub fn steps(&self) -> &[Step] {
+        self.steps
+    }
+}
+
+/// The controller's answer.
+#[derive(Debug)]
+#[must_use]
+pub enum Verdict<'w> {
+    /// Nothing was proved. The target may or may not be within reach.
+    Passed(Reason),
+    /// No posture within limits meets the target, for any machine within tolerance.
+    Refused(Refusal<'w>),
+}
+
+/// Why a target passed.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub enum Reason {
+    /// The working memory is too small for the machine or the splits.
+    Capacity,
+    /// A part could not be shown empty and is too narrow to cut.
+    NothingFound,
+    /// The simplex ran out of pivots on the part that stayed open.
+    PivotBudget,
+    /// A part stayed open and no more cuts are allowed.
+    SplitBudget,
+}
+
+impl Reason {
+    /// The reason in words.
+    pub const fn text(self) -> &'static str {
+        match self {
+            Reason::Capacity => "capacity",
+            Reason::NothingFound => "nothing found",
+            Reason::PivotBudget => "pivot budget",
+            Reason::SplitBudget => "split budget",
+        }
+    }
+}
+
+impl<const CELLS: usize, const PARTS: usize> Workspace<CELLS, PARTS> {
+    /// Empty working memory.
+    pub const fn new() -> Self {
+        Workspace {
+            cells: [Cell::ANYTHING; CELLS],
+            parts: Vec::new(),
+            steps: Vec::new(),
+            simplex: NodeSimplex::new(),
+        }
+    }
+}
+
+impl<const CELLS: usize, const PARTS: usize> Default for Workspace<CELLS, PARTS> {
+    fn default() -> Self {
+        Self::new()
+    }
+}
+
+/// What a node test found.
+pub enum Tested {
+    /// Empty by propagation.
+    Bounds(Empty),
+    /// Not shown empty; whether the simplex finished.
+    Open(Relaxed),
+    /// Empty by rows.
+    Rows(crate::certificate::Refuted),
+}
+
+/// The node test: propagation, then the linear program. Shrinks `spans`.
+pub fn test(
+    network: &mut Network,
+    spans: &mut Spans,
+    simplex: &mut NodeSimplex,
+    pivots: u16,
+) -> Tested {
+    if let Err(empty) = network.propagate(spans) {
+        return Tested::Bounds(empty);
+    }
+    if pivots == 0 {
+        return Tested::Open(Relaxed::Feasible);
+    }
+    match relax(network, spans, simplex, pivots.into()) {
+        Ok(refuted) => Tested::Rows(refuted),
+        Err(open) => Tested::Open(open),
+    }
+}
+
+/// Screens a target: refuses it only with proof.
+///
+/// Takes at most `splits` node tests and twice as many propagations per cut and candidate; no
+/// heap, no recursion, no panic.
+pub fn screen<'w, const N: usize, const CELLS: usize, const PARTS: usize>(
+    machine: &Machine<N>,
+    target: &Target,
+    options: &Options,
+    workspace: &'w mut Workspace<CELLS, PARTS>,
+) -> Verdict<'w> {
+    let chain = machine.chain();
+    let Workspace {
+        cells,
+        parts,
+        steps,
+        simplex,
+    } = workspace;
+    parts.clear();
+    steps.clear();
+    if chain.joints.len() > MOST_JOINTS || cells_for(chain.joints.len()) > CELLS {
+        return Verdict::Passed(Reason::Capacity);
+    }
+    let goal = Goal::new(target);
+    let mut network = Network::new(chain, &goal, options.rules, cells);
+    match walk(&mut network, options, parts, steps, simplex) {
+        // Every part was closed by a proof that `walk` consumed.
+        Ok(()) => Verdict::Refused(Refusal {
+            steps,
+            _only_made_here: (),
+        }),
+        Err(reason) => Verdict::Passed(reason),
+    }
+}
+
+/// Walks the tree of parts; `Ok` once every one has been closed with proof.
+fn walk<const PARTS: usize>(
+    network: &mut Network,
+    options: &Options,
+    parts: &mut Vec<Part, PARTS>,
+    steps: &mut Vec<Step, MOST_STEPS>,
+    simplex: &mut NodeSimplex,
+) -> Result<(), Reason> {
+    let mut splits = 1;
+    let full = |_| Reason::Capacity;
+    parts
+        .push(Part::Open(limits(network.chain())))
+        .map_err(|_| Reason::Capacity)?;
+    while let Some(part) = parts.pop() {
+        let mut spans = match part {
+            Part::Closed(Empty { .. }) => {
+                steps.push(Step::Bounds).map_err(full)?;
+                continue;
+            }
+            Part::Open(spans) => spans,
+        };
+        let open = match test(network, &mut spans, simplex, options.pivots) {
+            Tested::Bounds(Empty { .. }) => {
+                steps.push(Step::Bounds).map_err(full)?;
+                continue;
+            }
+            Tested::Rows(crate::certificate::Refuted { .. }) => {
+                steps.push(Step::Rows).map_err(full)?;
+                continue;
+            }
+            Tested::Open(open) => open,
+        };
+        if splits >= options.splits {
+            return Err(match open {
+                Relaxed::OutOfPivots => Reason::PivotBudget,
+                _ => Reason::SplitBudget,
+            });
+        }
+        let Branch::Cut {
+            variable,
+            lower,
+            upper,
+        } = network.branch(&spans, options.candidates.into())
+        else {
+            return Err(Reason::NothingFound);
+        };
+        splits += 1;
+        steps.push(Step::Cut(variable as u8)).map_err(full)?;
+        for half in [upper, lower] {
+            let part = half.map_or_else(Part::Closed, Part::Open);
+            parts.push(part).map_err(|_| Reason::Capacity)?;
+        }
+    }
+    Ok(())
+}
+
+/// The span of every variable before any cut.
+pub fn limits(chain: Chain) -> Spans {
+    chain
+        .variables
+        .iter()
+        .map(|variable| match variable.motion {
+            crate::machine::Motion::Turn => JointSpan::of_arc(variable.arc),
+            crate::machine::Motion::Slide => JointSpan::of_length(variable.length),
+        })
+        .collect()
+}
