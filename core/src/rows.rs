@@ -200,7 +200,7 @@ impl Expansion {
             let [x, y, _] = view;
             let (cx, cy) = (half_way(*x), half_way(*y));
             let (rx, ry) = ((x.width() + 1) / 2 + 1, (y.width() + 1) / 2 + 1);
-            let cubic = joint.cubic(middle.sine);
+            let bent = joint.bend(middle.sine);
             for (form, &[l0, l1, _]) in forms.iter_mut().zip(&middle.rotation) {
                 // L J a = -l0 a_y + l1 a_x, L P a = l0 a_x + l1 a_y.
                 let along = rounded(l1 as i64 * cx - l0 as i64 * cy) as i64;
@@ -210,7 +210,7 @@ impl Expansion {
                     + 2;
                 // What the coefficient may be off, times the sine.
                 let error = ((left * middle.sine) >> FRACTION_BITS)
-                    + ((along.abs() * cubic) >> FRACTION_BITS)
+                    + ((along.abs() * bent) >> FRACTION_BITS)
                     + 2;
                 // Minus one minus cosine, which may be up to two, times what lies across.
                 let across = x.scale(l0).plus(y.scale(l1)).round(0);
@@ -309,18 +309,24 @@ impl Joint {
             .normalised()
     }
 
-    /// Bound of `|sin(k d) - k sin(d)|` for a follower whose own deviation `k d` has at most the
-    /// given sine.
-    fn cubic(&self, sine: i64) -> i64 {
+    /// Bound of `|sin(e) - k sin(d)|`, where the joint deviates by `e` from its middle when its
+    /// variable deviates by `d`; `sine` bounds `|sin(e)|`.
+    fn bend(&self, sine: i64) -> i64 {
+        if self.is_plain() {
+            return 0;
+        }
         let one = ONE as i64;
-        if self.multiple.unsigned_abs() == 1 {
-            // Only the rounding of the middle directions.
-            if self.is_plain() { 0 } else { 16 }
-        } else if sine < one * 9 / 10 {
+        // The angle at variable zero is known to within its arc, middles to within rounding.
+        let loose = self.turn.about(self.turn.middle()).sine().magnitude() + 16;
+        let times = self.multiple.unsigned_abs() as i64;
+        if times == 1 {
+            loose
+        } else if sine + loose < one * 9 / 10 {
             // x - sin x <= x^3 / 6 and x <= (pi / 2) sin x.
-            (((sine * sine) >> FRACTION_BITS) * sine >> FRACTION_BITS) + 16
+            let sine = sine + loose;
+            ((((sine * sine) >> FRACTION_BITS) * sine) >> FRACTION_BITS) + loose + 16
         } else {
-            one * (1 + self.multiple.unsigned_abs() as i64)
+            one * (1 + times)
         }
     }
 }

@@ -225,10 +225,22 @@ pub fn pack(machine: &model::Machine, tip: usize) -> Result<Pack, PackError> {
         .iter()
         .map(|s| s.placement.translation.vector.norm() + s.xyz)
         .sum();
-    for (&index, _) in moving.iter().zip(&stretches) {
+    for &index in &moving {
         if machine.joints[index].kind == Kind::Prismatic {
             let [lo, hi] = machine.joints[index].limits.unwrap_or([0.0, 0.0]);
             reach += lo.abs().max(hi.abs());
+        }
+    }
+    // Variables of sliding joints are lengths too, though their joints may be elsewhere.
+    for (kind, drive) in variables.iter().zip(&drives) {
+        if *kind == Kind::Prismatic {
+            let most = drive.limits[0].abs().max(drive.limits[1].abs());
+            reach = reach.max(most / drive.multiple);
+        }
+    }
+    for &index in &moving {
+        if machine.joints[index].kind == Kind::Prismatic {
+            reach = reach.max(leader(machine, index).2.abs());
         }
     }
     if reach <= 0.0 {

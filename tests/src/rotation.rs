@@ -30,7 +30,12 @@ pub fn random_direction(rng: &mut impl Rng) -> Unit<Vector3<f64>> {
 fn signed_decomposition(x: &Matrix3<f64>) -> (Matrix3<f64>, Vector3<f64>, Matrix3<f64>, f64) {
     let svd = x.svd(true, true);
     let (u, v_t) = (svd.u.expect("asked for"), svd.v_t.expect("asked for"));
-    (u, svd.singular_values, v_t, (u * v_t).determinant().signum())
+    (
+        u,
+        svd.singular_values,
+        v_t,
+        (u * v_t).determinant().signum(),
+    )
 }
 
 /// The rotation nearest to a matrix in the Frobenius norm.

@@ -8,10 +8,11 @@ use balk::model::{Machine, Orientation, Target};
 use balk::pack::pack_target;
 use balk::posture::Linkage;
 use balk::read;
-use balk::search::{Solver, Verdict};
+use balk::search::{Screening, Solver, Verdict};
 use balk_core::fixed::{Arc, Direction, ONE};
 use balk_core::propagate::cell::{Cell, JointSpan};
 use balk_core::propagate::{Goal, Network};
+use balk_core::screen::{cells_for, limits};
 use nalgebra::{Isometry3, Matrix3, Rotation3, Vector3};
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
@@ -21,7 +22,10 @@ use std::f64::consts::{PI, TAU};
 const NODES: u64 = 2000;
 
 fn machine(name: &str) -> Machine {
-    let file = format!("{}/machines/published/{name}.toml", env!("CARGO_MANIFEST_DIR"));
+    let file = format!(
+        "{}/machines/published/{name}.toml",
+        env!("CARGO_MANIFEST_DIR")
+    );
     read::machine(&std::fs::read(&file).unwrap(), &file).unwrap()
 }
 
@@ -55,8 +59,8 @@ fn decide(solver: &Solver, target: &Target) -> Option<Vec<f64>> {
 }
 
 /// Whether the controller refuses the target at so many splits.
-fn refused(solver: &Solver, target: &Target, splits: usize) -> bool {
-    solver.refused(target, splits).0
+fn refused(solver: &Solver, target: &Target, splits: u16) -> bool {
+    matches!(solver.screen(target, splits), Screening::Refused { .. })
 }
 
 /// The difference of two angles, at most half a turn.
@@ -135,7 +139,10 @@ fn the_pose_with_sixteen_postures_is_never_refused() {
         let target = sixteen_target(&arm);
         let solver = Solver::new(&arm, 0).unwrap();
         for splits in [1, 4, 8, 16, 32] {
-            assert!(!refused(&solver, &target, splits), "{name} at {splits} splits");
+            assert!(
+                !refused(&solver, &target, splits),
+                "{name} at {splits} splits"
+            );
         }
         let joints = decide(&solver, &target).expect(name);
         assert!(meets(&arm, &target, &joints, 1e-9), "{name}");
@@ -159,10 +166,10 @@ fn arc_about(solver: &Solver, variable: usize, value: f64, half: f64) -> (Arc, D
 fn keeps(solver: &Solver, target: &Target, posture: &[f64], half: f64) -> bool {
     let packed = pack_target(target, solver.pack.scale);
     let goal = Goal::new(&packed);
-    let chain = solver.chain();
-    let mut cells = vec![Cell::ANYTHING; Network::cells(chain.joints.len())];
-    let mut network = Network::new(chain, &goal, solver.rules, &mut cells);
-    let mut spans = Network::limits(chain);
+    let chain = solver.pack.machine.chain();
+    let mut cells = vec![Cell::ANYTHING; cells_for(chain.joints.len())];
+    let mut network = Network::new(chain, &goal, solver.options.rules, &mut cells);
+    let mut spans = limits(chain);
     let mut at = Vec::new();
     for (variable, span) in spans.iter_mut().enumerate() {
         let value = posture[solver.pack.drives[variable].joint];
@@ -171,7 +178,10 @@ fn keeps(solver: &Solver, target: &Target, posture: &[f64], half: f64) -> bool {
         at.push(middle);
     }
     network.propagate(&mut spans).is_ok()
-        && spans.iter().zip(at).all(|(span, middle)| span.arc.contains(middle))
+        && spans
+            .iter()
+            .zip(at)
+            .all(|(span, middle)| span.arc.contains(middle))
 }
 
 #[test]
@@ -206,10 +216,20 @@ fn spans_beside_the_sixteen_postures_hold_none() {
 }
 
 /// Distinct postures for one pose, found by descent from random starts.
-fn postures(solver: &Solver, linkage: &Linkage, target: &Target, starts: usize, rng: &mut ChaCha8Rng) -> Vec<Vec<f64>> {
+fn postures(
+    solver: &Solver,
+    linkage: &Linkage,
+    target: &Target,
+    starts: usize,
+    rng: &mut ChaCha8Rng,
+) -> Vec<Vec<f64>> {
     let mut found: Vec<Vec<f64>> = Vec::new();
     for _ in 0..starts {
-        let mut values: Vec<f64> = linkage.limits.iter().map(|_| rng.random_range(-PI..PI)).collect();
+        let mut values: Vec<f64> = linkage
+            .limits
+            .iter()
+            .map(|_| rng.random_range(-PI..PI))
+            .collect();
         if linkage.seek(target, &mut values) > 1e-20 {
             continue;
         }
@@ -257,7 +277,11 @@ fn the_pose_has_exactly_sixteen_postures() {
 #[test]
 fn no_pose_has_more_postures_than_the_theory_allows() {
     let mut rng = ChaCha8Rng::seed_from_u64(2);
-    for (name, most) in [("sixteen", 16), ("sixteen_twisted", 16), ("textbook_six", 8)] {
+    for (name, most) in [
+        ("sixteen", 16),
+        ("sixteen_twisted", 16),
+        ("textbook_six", 8),
+    ] {
         let mut arm = machine(name);
         for joint in &mut arm.joints {
             joint.limits = None;
@@ -269,7 +293,11 @@ fn no_pose_has_more_postures_than_the_theory_allows() {
             let q: Vec<f64> = (0..6).map(|_| rng.random_range(-PI..PI)).collect();
             let target = target(&tip_pose(&arm, &q, 0), 0.0, 0.0);
             let found = postures(&solver, &linkage, &target, 600, &mut rng);
-            assert!((1..=most).contains(&found.len()), "{name} at {q:?}: {}", found.len());
+            assert!(
+                (1..=most).contains(&found.len()),
+                "{name} at {q:?}: {}",
+                found.len()
+            );
             highest = highest.max(found.len());
         }
         assert!(highest >= 8, "{name}: {highest}");
@@ -301,12 +329,15 @@ fn textbook_postures(pose: &Isometry3<f64>) -> Vec<[f64; 6]> {
             let second = y.atan2(x) - (a3 * s3 - d4 * c3).atan2(a2 + a3 * c3 + d4 * s3);
             let about = |axis, angle| Rotation3::from_axis_angle(&axis, angle).into_inner();
             let (ax, az) = (Vector3::x_axis(), Vector3::z_axis());
-            let forearm = about(az, first) * about(ax, -PI / 2.0) * about(az, second + third)
+            let forearm = about(az, first)
+                * about(ax, -PI / 2.0)
+                * about(az, second + third)
                 * about(ax, PI / 2.0);
             let m = forearm.transpose() * r;
             let bend = m[(0, 2)].hypot(m[(1, 2)]);
             if bend < 1e-9 {
-                let sum = (m[(1, 0)] - m[(0, 1)] * m[(2, 2)]).atan2(m[(0, 0)] + m[(1, 1)] * m[(2, 2)]);
+                let sum =
+                    (m[(1, 0)] - m[(0, 1)] * m[(2, 2)]).atan2(m[(0, 0)] + m[(1, 1)] * m[(2, 2)]);
                 let fifth = if m[(2, 2)] > 0.0 { 0.0 } else { PI };
                 found.push([first, second, third, 0.0, fifth, sum]);
                 continue;
@@ -342,7 +373,9 @@ fn textbook_reaches(arm: &Machine, pose: &Isometry3<f64>, spare: f64) -> bool {
         (0..6).all(|k| match k {
             3 if stretched => true,
             5 if stretched => {
-                let sum = limits(3).zip(limits(5)).map(|(a, b)| [a[0] + b[0], a[1] + b[1]]);
+                let sum = limits(3)
+                    .zip(limits(5))
+                    .map(|(a, b)| [a[0] + b[0], a[1] + b[1]]);
                 allowed(sum, q[5], spare)
             }
             _ => allowed(limits(k), q[k], spare),
@@ -359,7 +392,11 @@ fn the_closed_form_reproduces_its_poses() {
         let q: Vec<f64> = (0..6).map(|_| rng.random_range(-PI..PI)).collect();
         let pose = tip_pose(&arm, &q, 0);
         let found = textbook_postures(&pose);
-        assert!(found.iter().any(|p| p.iter().zip(&q).all(|(a, b)| apart(*a, *b) < 1e-7)));
+        assert!(
+            found
+                .iter()
+                .any(|p| p.iter().zip(&q).all(|(a, b)| apart(*a, *b) < 1e-7))
+        );
         for p in &found {
             let again = tip_pose(&arm, p, 0);
             assert!((again.translation.vector - pose.translation.vector).amax() < 1e-12);
@@ -412,7 +449,10 @@ fn compare(
         let target = target(&pose, 0.0, 0.0);
         match solver.decide(&target, NODES).verdict {
             Verdict::Reachable { joints } => {
-                assert!(expected, "reachable against the closed form: {pose:?} {joints:?}");
+                assert!(
+                    expected,
+                    "reachable against the closed form: {pose:?} {joints:?}"
+                );
                 assert!(meets(arm, &target, &joints, 1e-9));
                 reachable += 1;
             }
@@ -422,9 +462,12 @@ fn compare(
             Verdict::Undecided { .. } => undecided += 1,
         }
         // Many splits of a reachable target cost more than the decision.
-        let splits: &[usize] = if compared % 16 == 0 { &[1, 8] } else { &[1] };
+        let splits: &[u16] = if compared % 16 == 0 { &[1, 8] } else { &[1] };
         for &splits in splits.iter().filter(|_| expected) {
-            assert!(!refused(&solver, &target, splits), "refused at {splits}: {pose:?}");
+            assert!(
+                !refused(&solver, &target, splits),
+                "refused at {splits}: {pose:?}"
+            );
         }
     }
     [compared, reachable, undecided]
@@ -435,11 +478,16 @@ fn the_search_agrees_with_the_closed_form_of_the_textbook_arm() {
     let arm = machine("textbook_six");
     let mut rng = ChaCha8Rng::seed_from_u64(4);
     let poses = (0..2100).map(|k| random_pose(&arm, &mut rng, k % 3));
-    let counts = compare(&arm, poses, |pose, spare| textbook_reaches(&arm, pose, spare));
+    let counts = compare(&arm, poses, |pose, spare| {
+        textbook_reaches(&arm, pose, spare)
+    });
     println!("compared, reachable, undecided: {counts:?}");
     let [compared, reachable, undecided] = counts;
     assert!(compared > 2090 && reachable > 700 && compared - reachable > 500);
-    assert!(undecided * 100 <= compared, "{undecided} of {compared} undecided");
+    assert!(
+        undecided * 100 <= compared,
+        "{undecided} of {compared} undecided"
+    );
 }
 
 /// Poses of Fu, Gonzalez & Lee 1987, sec. 2.2 (the first as printed there, the others computed):
@@ -466,17 +514,28 @@ fn limits_beside_the_postures_of_the_textbook_poses_are_told() {
             values.sort_by(f64::total_cmp);
             values.push(values[0] + TAU);
             let margin = 1f64.to_radians();
-            for pair in values.windows(2).filter(|pair| pair[1] - pair[0] > 3.0 * margin) {
+            for pair in values
+                .windows(2)
+                .filter(|pair| pair[1] - pair[0] > 3.0 * margin)
+            {
                 let mut tight = arm.clone();
                 tight.joints[joint].limits = Some([pair[0] + margin, pair[1] - margin]);
                 assert!(!textbook_reaches(&tight, &pose, 1e-7));
                 let solver = Solver::new(&tight, 0).unwrap();
-                assert_eq!(decide(&solver, &target), None, "{q:?} joint {joint}: {pair:?}");
+                assert_eq!(
+                    decide(&solver, &target),
+                    None,
+                    "{q:?} joint {joint}: {pair:?}"
+                );
                 // With the next value let in, the closed form says which.
                 tight.joints[joint].limits = Some([pair[0] + margin, pair[1] + margin]);
                 let solver = Solver::new(&tight, 0).unwrap();
                 let expected = textbook_reaches(&tight, &pose, 0.0);
-                assert_eq!(decide(&solver, &target).is_some(), expected, "{q:?} joint {joint}");
+                assert_eq!(
+                    decide(&solver, &target).is_some(),
+                    expected,
+                    "{q:?} joint {joint}"
+                );
             }
         }
     }
@@ -526,13 +585,22 @@ fn the_search_agrees_with_the_closed_form_of_the_horizontal_arm() {
         );
         let about = Rotation3::from_axis_angle(&Vector3::z_axis(), rng.random_range(-PI..PI));
         // One in six is tilted, by much or little.
-        let tilt = if k % 6 == 0 { [0.5, 1e-3, 1e-6][k / 6 % 3] } else { 0.0 };
+        let tilt = if k % 6 == 0 {
+            [0.5, 1e-3, 1e-6][k / 6 % 3]
+        } else {
+            0.0
+        };
         let over = Rotation3::from_axis_angle(&Vector3::x_axis(), PI + tilt);
         Isometry3::from_parts(p.into(), (about * over).into())
     });
-    let counts = compare(&arm, poses, |pose, spare| horizontal_reaches(&arm, pose, spare));
+    let counts = compare(&arm, poses, |pose, spare| {
+        horizontal_reaches(&arm, pose, spare)
+    });
     println!("compared, reachable, undecided: {counts:?}");
     let [compared, reachable, undecided] = counts;
     assert!(compared > 2990 && reachable > 800 && compared - reachable > 800);
-    assert!(undecided * 100 <= compared, "{undecided} of {compared} undecided");
+    assert!(
+        undecided * 100 <= compared,
+        "{undecided} of {compared} undecided"
+    );
 }

@@ -174,8 +174,9 @@ const ONE_JOINT: &str =
 
 fn read_rotation(machine: &Machine, x: &Matrix3<f64>, within: f64) -> Result<Target, String> {
     let rows: Vec<f64> = x.transpose().iter().copied().collect();
-    let text =
-        format!("{{\"xyz\":[1,0,0],\"xyz_within\":0,\"rotation\":{rows:?},\"turn_within\":{within:?}}}");
+    let text = format!(
+        "{{\"xyz\":[1,0,0],\"xyz_within\":0,\"rotation\":{rows:?},\"turn_within\":{within:?}}}"
+    );
     let line = read::Line {
         number: 1,
         bytes: Some(text.into_bytes()),
@@ -249,7 +250,12 @@ fn the_generator_of_uniform_rotations_is_uniform() {
         let r = q.to_rotation_matrix();
         let angle = turn_between(&Rotation3::identity(), &r);
         let trace = r.matrix().trace();
-        let values = [angle, (angle <= FRAC_PI_2) as u8 as f64, trace, trace * trace];
+        let values = [
+            angle,
+            (angle <= FRAC_PI_2) as u8 as f64,
+            trace,
+            trace * trace,
+        ];
         let squares = q.coords.iter().chain(r.matrix().iter()).map(|x| x * x);
         for (moment, value) in moments.iter_mut().zip(values.into_iter().chain(squares)) {
             moment.2 += value;
@@ -287,7 +293,10 @@ fn a_cone_takes_its_share_of_orientations() {
         })
         .count() as f64;
     let deviation = (SAMPLES as f64 * share * (1.0 - share)).sqrt();
-    assert!((inside - SAMPLES as f64 * share).abs() < 4.0 * deviation, "{inside}");
+    assert!(
+        (inside - SAMPLES as f64 * share).abs() < 4.0 * deviation,
+        "{inside}"
+    );
 }
 
 /// Half-angles of the pyramids that touch a cone of 30 degrees from outside (geometry, computed).
@@ -301,7 +310,11 @@ fn outer_pyramids_touch_their_cone() {
         // line half way, at the angle of the cone.
         let edge = |k: usize| {
             let about = 2.0 * PI * k as f64 / facets as f64;
-            Vector3::new(half_angle.tan() * about.cos(), half_angle.tan() * about.sin(), 1.0)
+            Vector3::new(
+                half_angle.tan() * about.cos(),
+                half_angle.tan() * about.sin(),
+                1.0,
+            )
         };
         let normal = edge(0).cross(&edge(1)).normalize();
         let nearest = PI / 2.0 - angle_between(&normal, &Vector3::z());
@@ -373,7 +386,8 @@ fn the_box_of_a_cone_holds_its_directions() {
     for base in directions(&mut rng) {
         for within in ANGLES {
             let tip = random_direction(&mut rng);
-            let Goal::Axes { cones, .. } = goal(Orientation::Axes(vec![Cone { tip, base, within }]))
+            let Goal::Axes { cones, .. } =
+                goal(Orientation::Axes(vec![Cone { tip, base, within }]))
             else {
                 panic!("a cone was asked for")
             };
@@ -389,7 +403,11 @@ fn the_box_of_a_cone_holds_its_directions() {
                 if about.norm() < 1e-3 {
                     continue;
                 }
-                let part = if sample < 30 { 1.0 } else { rng.random::<f64>() };
+                let part = if sample < 30 {
+                    1.0
+                } else {
+                    rng.random::<f64>()
+                };
                 let angle = within.min(PI) * part;
                 let axis = Rotation3::from_axis_angle(&Unit::new_normalize(about), angle) * base;
                 for k in 0..3 {
@@ -416,7 +434,8 @@ fn the_box_of_a_cone_is_tight() {
     for base in directions(&mut rng) {
         for within in ANGLES.into_iter().filter(|angle| *angle < 3.0) {
             let tip = Vector3::z_axis();
-            let Goal::Axes { cones, .. } = goal(Orientation::Axes(vec![Cone { tip, base, within }]))
+            let Goal::Axes { cones, .. } =
+                goal(Orientation::Axes(vec![Cone { tip, base, within }]))
             else {
                 panic!("a cone was asked for")
             };
@@ -427,8 +446,14 @@ fn the_box_of_a_cone_is_tight() {
                 let own = cones[0].in_base[k];
                 // Near an axis the rounding of a component by two units is worth its root.
                 let spare = 1e-7 + 8.0 * within.sin() * (2f64.powi(-30)).sqrt();
-                assert!(own.lo as f64 / ONE as f64 >= lo - spare, "{base:?} {within} {k}");
-                assert!(own.hi as f64 / ONE as f64 <= hi + spare, "{base:?} {within} {k}");
+                assert!(
+                    own.lo as f64 / ONE as f64 >= lo - spare,
+                    "{base:?} {within} {k}"
+                );
+                assert!(
+                    own.hi as f64 / ONE as f64 <= hi + spare,
+                    "{base:?} {within} {k}"
+                );
             }
         }
     }
@@ -438,7 +463,10 @@ fn the_box_of_a_cone_is_tight() {
 /// permutations, half turns, and close to either.
 fn orientations(rng: &mut ChaCha8Rng) -> Vec<Rotation3<f64>> {
     let quarter = |k: usize, n: usize| {
-        Rotation3::from_axis_angle(&Unit::new_unchecked(Vector3::ith(k, 1.0)), n as f64 * FRAC_PI_2)
+        Rotation3::from_axis_angle(
+            &Unit::new_unchecked(Vector3::ith(k, 1.0)),
+            n as f64 * FRAC_PI_2,
+        )
     };
     let mut all = Vec::new();
     for first in 0..3 {
@@ -457,8 +485,8 @@ fn orientations(rng: &mut ChaCha8Rng) -> Vec<Rotation3<f64>> {
     // all of them are rounded the same way.
     for odd in [1.0, 3.0, 1001.0, 123_456_789.0] {
         for sign in [1.0, -1.0] {
-            let [i, j, k] = [odd + 0.499, sign * (odd + 2.499), odd + 4.499]
-                .map(|units| units / ONE as f64);
+            let [i, j, k] =
+                [odd + 0.499, sign * (odd + 2.499), odd + 4.499].map(|units| units / ONE as f64);
             let w = (1.0 - i * i - j * j - k * k).sqrt();
             let q = UnitQuaternion::new_unchecked(nalgebra::Quaternion::new(w, i, j, k));
             all.push(q.to_rotation_matrix());
@@ -476,6 +504,7 @@ fn the_boxes_of_an_orientation_hold_its_rotations() {
             let Goal::Near {
                 axes,
                 least,
+                cosine,
                 sine,
                 wanted: columns,
                 ..
@@ -494,7 +523,11 @@ fn the_boxes_of_an_orientation_hold_its_rotations() {
                     }
                     _ => random_direction(&mut rng),
                 };
-                let part = if sample < 15 { 1.0 } else { rng.random::<f64>() };
+                let part = if sample < 15 {
+                    1.0
+                } else {
+                    rng.random::<f64>()
+                };
                 let angle = within.min(PI) * part;
                 let actual = Rotation3::from_axis_angle(&about, angle) * wanted;
                 let m = actual.matrix();
@@ -517,25 +550,28 @@ fn the_boxes_of_an_orientation_hold_its_rotations() {
                     .sum();
                 let least = least.lo as f64 / ONE_SQUARED as f64;
                 assert!(least <= most + 1e-14, "wanted {wanted} within {within}");
-                // The sine covers the angle asked for, and nearly the rounding of the orientation.
-                if let Some(sine) = sine {
-                    let middle = Matrix3::from_fn(|k, j| {
-                        (columns[j][k].lo as f64 + columns[j][k].hi as f64) / 2.0 / ONE as f64
-                    });
-                    let product = m * middle.transpose();
-                    let turn = Vector3::new(
-                        product[(2, 1)] - product[(1, 2)],
-                        product[(0, 2)] - product[(2, 0)],
-                        product[(1, 0)] - product[(0, 1)],
-                    );
-                    let units = turn.norm() / 2.0 * ONE as f64;
-                    assert!(holds(Interval::clamped(0, sine.hi as i64), angle.sin().max(0.0)));
-                    assert!(
-                        units <= sine.hi as f64 + ROUNDED_QUATERNION,
-                        "wanted {wanted} within {within}: {units} {}",
-                        sine.hi
-                    );
+                // Cosine and sine cover the angle asked for and nearly the rounding of the
+                // orientation; beyond a quarter turn the sine falls.
+                assert!(cosine.lo as f64 <= angle.cos() * ONE as f64 + 1e-6);
+                if cosine.lo < 0 {
+                    continue;
                 }
+                assert!(sine.hi as f64 >= angle.sin() * ONE as f64 - 1e-6);
+                let middle = Matrix3::from_fn(|k, j| {
+                    (columns[j][k].lo as f64 + columns[j][k].hi as f64) / 2.0 / ONE as f64
+                });
+                let product = m * middle.transpose();
+                let turn = Vector3::new(
+                    product[(2, 1)] - product[(1, 2)],
+                    product[(0, 2)] - product[(2, 0)],
+                    product[(1, 0)] - product[(0, 1)],
+                );
+                let units = turn.norm() / 2.0 * ONE as f64;
+                assert!(
+                    units <= sine.hi as f64 + ROUNDED_QUATERNION,
+                    "wanted {wanted} within {within}: {units} {}",
+                    sine.hi
+                );
             }
         }
     }

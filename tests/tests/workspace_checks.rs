@@ -3,7 +3,7 @@
 use balk::kinematics::meets;
 use balk::model::{Machine, Orientation, Target};
 use balk::read;
-use balk::search::{Solver, Verdict};
+use balk::search::{Screening, Solver, Verdict};
 use nalgebra::{Rotation3, Vector3};
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
@@ -13,7 +13,10 @@ use std::f64::consts::{PI, TAU};
 const NODES: u64 = 2000;
 
 fn machine(name: &str) -> Machine {
-    let file = format!("{}/machines/published/{name}.toml", env!("CARGO_MANIFEST_DIR"));
+    let file = format!(
+        "{}/machines/published/{name}.toml",
+        env!("CARGO_MANIFEST_DIR")
+    );
     read::machine(&std::fs::read(&file).unwrap(), &file).unwrap()
 }
 
@@ -44,8 +47,8 @@ fn reaches(machine: &Machine, solver: &Solver, target: &Target) -> Option<bool> 
 }
 
 /// Whether the controller refuses the target at so many splits.
-fn refused(solver: &Solver, target: &Target, splits: usize) -> bool {
-    solver.refused(target, splits).0
+fn refused(solver: &Solver, target: &Target, splits: u16) -> bool {
+    matches!(solver.screen(target, splits), Screening::Refused { .. })
 }
 
 /// Cosine of the second angle of a planar arm with two joints: reachable exactly when its size is
@@ -76,7 +79,11 @@ fn two_link_arms_inside_outside_and_on_the_edge_of_their_ring() {
         };
         assert!(meets(&arm, &target, &joints, 1e-9));
         let second = elbow_cosine(l1, l2, x, y);
-        assert!((joints[1].cos() - second).abs() < 1e-8, "{name}: {}", joints[1]);
+        assert!(
+            (joints[1].cos() - second).abs() < 1e-8,
+            "{name}: {}",
+            joints[1]
+        );
     }
     let outside = [
         ("planar_2_1", [0.999, 0.0]),
@@ -90,7 +97,11 @@ fn two_link_arms_inside_outside_and_on_the_edge_of_their_ring() {
         let arm = machine(name);
         let solver = Solver::new(&arm, 0).unwrap();
         let target = planar(x, y, None, 0.0);
-        assert_eq!(reaches(&arm, &solver, &target), Some(false), "{name}: ({x}, {y})");
+        assert_eq!(
+            reaches(&arm, &solver, &target),
+            Some(false),
+            "{name}: ({x}, {y})"
+        );
         assert!(refused(&solver, &target, 1), "{name}: ({x}, {y})");
     }
     let edge = [
@@ -108,9 +119,15 @@ fn two_link_arms_inside_outside_and_on_the_edge_of_their_ring() {
             let target = planar(x, y, None, within);
             let answer = reaches(&arm, &solver, &target);
             assert_ne!(answer, Some(false), "{name}: ({x}, {y}) within {within}");
-            assert!(within < 1e-6 || answer == Some(true), "{name}: ({x}, {y}) within {within}");
+            assert!(
+                within < 1e-6 || answer == Some(true),
+                "{name}: ({x}, {y}) within {within}"
+            );
             for splits in [1, 8, 32] {
-                assert!(!refused(&solver, &target, splits), "{name}: ({x}, {y}) within {within}");
+                assert!(
+                    !refused(&solver, &target, splits),
+                    "{name}: ({x}, {y}) within {within}"
+                );
             }
         }
     }
@@ -202,7 +219,10 @@ fn all_headings_only_in_the_dexterous_set() {
             let target = planar(x, y, Some(heading), 0.0);
             let answer = reaches(&arm, &solver, &target);
             assert_eq!(answer, Some(expected), "r {r}, heading {k}, wrist {wrist}");
-            assert!(!expected || !refused(&solver, &target, 1), "r {r}, heading {k}");
+            assert!(
+                !expected || !refused(&solver, &target, 1),
+                "r {r}, heading {k}"
+            );
             reachable += expected as usize;
         }
         assert_eq!(reachable == HEADINGS, dexterous, "r {r}: {reachable}");
@@ -249,7 +269,11 @@ fn two_joints_have_at_most_the_centre_as_dexterous_set() {
                 for (off, expected) in [(0.0, true), (1e-3, false), (-1e-6, false)] {
                     let target = planar(x, y, Some(heading + off), 0.0);
                     let answer = reaches(&arm, &solver, &target);
-                    assert_eq!(answer, Some(expected), "{name}: r {r}, heading {heading} + {off}");
+                    assert_eq!(
+                        answer,
+                        Some(expected),
+                        "{name}: r {r}, heading {heading} + {off}"
+                    );
                 }
             }
             let some = (0..24).any(|k| {
@@ -288,7 +312,10 @@ fn the_elbow_arm_reaches_a_spherical_shell() {
             }
             None => undecided += 1.0,
         }
-        assert!(!expected || !refused(&solver, &target, 1), "{xyz:?} refused");
+        assert!(
+            !expected || !refused(&solver, &target, 1),
+            "{xyz:?} refused"
+        );
     }
     assert_eq!(undecided, 0.0);
     let cube = (2.0 * HALF).powi(3);
