@@ -1,8 +1,9 @@
 //! The linear program of a node: rows chosen lazily, solved in single precision, and refused only
 //! when the integer kernel confirms the multipliers.
 
-use crate::certificate::{Combination, Refuted};
+use crate::certificate::{Combination, Range, Refuted};
 use crate::fixed::{FRACTION_BITS, Interval, ONE, root_up};
+use crate::machine::Variable;
 use crate::propagate::cell::Vector;
 use crate::propagate::{Goal, MOST_FEATURES, MOST_JOINTS, Network, Spans};
 use crate::rows::{Expansion, Form, Linear};
@@ -140,7 +141,7 @@ pub enum Relaxed {
     Unconfirmed,
 }
 
-/// Tries to show that a propagated node is empty.
+/// Tries to show that a propagated node is empty, and shaves off what is.
 ///
 /// `pivots` bounds the work of the simplex. Afterwards its point, if the rows can be met, is a
 /// guess at a posture: see [`guess`].
@@ -149,7 +150,7 @@ pub enum Relaxed {
 /// Why there is no proof. It does not mean that a posture exists.
 pub fn relax(
     network: &Network,
-    spans: &Spans,
+    spans: &mut Spans,
     simplex: &mut NodeSimplex,
     pivots: u32,
 ) -> Result<Refuted, Relaxed> {
@@ -157,42 +158,97 @@ pub fn relax(
         network,
         expansion: Expansion::new(network, spans),
     };
-    let boxes = rows.expansion.boxes();
-    let trouble = Relaxed::Unconfirmed;
-    simplex
-        .start(boxes.iter().copied())
-        .map_err(|_| trouble)?;
-    let mut used: Vec<(usize, usize), MOST_ROWS> = Vec::new();
+    let mut program = Program {
+        rows: Vec::new(),
+        boxes: rows.expansion.boxes().iter().copied().collect(),
+        simplex,
+        pivots,
+    };
     let mut added = [false; MOST_FEATURES + MOST_CONES];
-    loop {
-        let (group, group_rows) = rows
-            .most_violated(simplex, &added)
-            .ok_or(Relaxed::Feasible)?;
+    program
+        .simplex
+        .start(program.boxes.iter().copied())
+        .map_err(|_| Relaxed::Unconfirmed)?;
+    while let Some((group, group_rows)) = rows.most_violated(program.simplex, &added) {
         added[group] = true;
-        for (k, linear) in group_rows.iter().enumerate() {
-            used.push((group, k)).map_err(|_| Relaxed::Feasible)?;
-            simplex.add_row(linear.row()).map_err(|_| trouble)?;
+        for linear in group_rows {
+            if program.simplex.add_row(linear.row()).is_err() || program.rows.push(linear).is_err()
+            {
+                return Err(Relaxed::Unconfirmed);
+            }
         }
-        match simplex.solve(pivots.saturating_sub(simplex.pivots())) {
+        match program.solve() {
             Outcome::Feasible => {}
-            Outcome::Infeasible => break,
+            Outcome::Infeasible => return program.confirm().ok_or(Relaxed::Unconfirmed),
             Outcome::OutOfPivots => return Err(Relaxed::OutOfPivots),
-            Outcome::Unstable => return Err(trouble),
+            Outcome::Unstable => return Err(Relaxed::Unconfirmed),
+        }
+        if program.rows.len() + 3 > MOST_ROWS {
+            break;
         }
     }
-    let mut multipliers = [0i32; MOST_ROWS];
-    simplex.multipliers(&mut multipliers);
-    let mut left_overs = [0i64; MOST_JOINTS];
-    let left_overs = left_overs.get_mut(..boxes.len()).ok_or(trouble)?;
-    let mut sum = Combination::new(left_overs);
-    for (&(group, k), &multiplier) in used.iter().zip(&multipliers) {
-        if multiplier != 0 {
-            let group_rows = rows.group(group);
-            let row = group_rows.get(k).ok_or(trouble)?.row();
-            sum = sum.add(multiplier, row).map_err(|_| trouble)?;
+    program.shave(spans, network.chain().variables);
+    Err(Relaxed::Feasible)
+}
+
+/// The linear program of a node.
+struct Program<'s> {
+    rows: Vec<Linear, MOST_ROWS>,
+    boxes: Vec<Range, MOST_JOINTS>,
+    simplex: &'s mut NodeSimplex,
+    pivots: u32,
+}
+
+impl Program<'_> {
+    fn solve(&mut self) -> Outcome {
+        let left = self.pivots.saturating_sub(self.simplex.pivots());
+        self.simplex.solve(left)
+    }
+
+    /// Lets the kernel judge the simplex's contradiction over the present boxes.
+    fn confirm(&self) -> Option<Refuted> {
+        let mut multipliers = [0i32; MOST_ROWS];
+        self.simplex.multipliers(&mut multipliers);
+        let mut left_overs = [0i64; MOST_JOINTS];
+        let mut sum = Combination::new(left_overs.get_mut(..self.boxes.len())?);
+        for (linear, &multiplier) in self.rows.iter().zip(&multipliers) {
+            sum = sum.add(multiplier, linear.row()).ok()?;
+        }
+        sum.refute(self.boxes.iter().copied()).ok()
+    }
+
+    /// Cuts off the ends of spans that the program shows empty, an eighth at a time.
+    fn shave(&mut self, spans: &mut Spans, variables: &[Variable]) {
+        for v in 0..self.boxes.len() {
+            for upper in [false, true] {
+                while let Some(rest) = self.cut_off(v, upper) {
+                    self.boxes[v] = rest;
+                }
+            }
+            spans[v].keep(self.boxes[v], variables[v].motion);
         }
     }
-    sum.refute(boxes.iter().copied()).map_err(|_| trouble)
+
+    /// What is left of a box when the end slice is shown empty.
+    fn cut_off(&mut self, v: usize, upper: bool) -> Option<Range> {
+        let whole = self.boxes[v];
+        let (lo, hi) = (whole.lower?, whole.upper?);
+        let slice = (hi - lo) / 8;
+        if slice < 1 << 10 {
+            return None;
+        }
+        let (cut, rest) = if upper {
+            (Range::between(hi - slice, hi), Range::between(lo, hi - slice))
+        } else {
+            (Range::between(lo, lo + slice), Range::between(lo + slice, hi))
+        };
+        self.boxes[v] = cut;
+        self.simplex.set_box(v, cut);
+        let empty = self.solve() == Outcome::Infeasible && self.confirm().is_some();
+        self.boxes[v] = whole;
+        self.simplex.set_box(v, if empty { rest } else { whole });
+        empty.then_some(rest)
+    }
 }
 
 impl Rows<'_, '_> {

@@ -15,9 +15,9 @@
 //! Rows are integers with outward rounding: the simplex may propose anything over them.
 
 use crate::certificate::{Range, Row, Term};
-use crate::fixed::{Arc, Direction, FRACTION_BITS, Interval, ONE};
+use crate::fixed::{Arc, Direction, FRACTION_BITS, Interval, ONE, ONE_SQUARED, root_down};
 use crate::machine::{Joint, Motion};
-use crate::propagate::cell::Vector;
+use crate::propagate::cell::{JointSpan, Vector};
 use crate::propagate::{Chain, MOST_JOINTS, Network, Spans};
 use heapless::Vec;
 
@@ -338,6 +338,29 @@ fn half_way(i: Interval) -> i64 {
 /// How far a placement may move a point, beyond its centre, in any component.
 fn placement_noise(turn_slack: i32, origin: &Vector) -> i64 {
     turn_slack as i64 + origin.iter().map(|o| o.width()).max().unwrap_or(0)
+}
+
+impl JointSpan {
+    /// Keeps the deviations from the middle whose sine (or length) lies in the range.
+    ///
+    /// Leaves a span of more than half a turn as it is: a sine has two angles there.
+    pub fn keep(&mut self, range: Range, motion: Motion) {
+        let (Some(lo), Some(hi)) = (range.lower, range.upper) else {
+            return;
+        };
+        if motion == Motion::Slide {
+            let middle = half_way(self.length);
+            self.length = Interval::clamped(middle + lo, middle + hi);
+        } else if !self.arc.full && !self.arc.is_wide() {
+            let middle = self.arc.middle();
+            let end = |sine: i64| {
+                let cosine = root_down(ONE_SQUARED - sine * sine);
+                middle.turned(Direction { x: cosine as i32, y: sine as i32 })
+            };
+            let kept = Arc::new(end(lo), end(hi)).normalised();
+            let _ = self.meet_arc(kept);
+        }
+    }
 }
 
 impl Arc {

@@ -32,7 +32,7 @@ impl Default for Options {
     fn default() -> Self {
         Options {
             splits: 1,
-            pivots: 60,
+            pivots: 200,
             candidates: 2,
             rules: Rules::ALL,
         }
