@@ -112,7 +112,8 @@ impl Linkage {
         let mut trial = [0.0; 8];
         let trial = &mut trial[..values.len()];
         let pose = self.pose(values, columns);
-        let mut error = residual(target, &pose);
+        let (mut error, share) = residual(target, &pose);
+        columns.iter_mut().for_each(|c| *c = share * *c);
         let mut size = error.norm_squared();
         let mut damping = 1e-3;
         for _ in 0..STEPS {
@@ -127,10 +128,12 @@ impl Linkage {
             let mut next = [Column::zeros(); 8];
             let next = &mut next[..values.len()];
             let pose = self.pose(trial, next);
-            let after = residual(target, &pose);
+            let (after, share) = residual(target, &pose);
+            next.iter_mut().for_each(|c| *c = share * *c);
             let reduced = after.norm_squared();
             if reduced < size {
-                if reduced > size * 0.9999 {
+                // Slow only counts once the damping cannot be the reason.
+                if reduced > size * 0.9999 && damping < 1e-11 {
                     size = reduced;
                     values.copy_from_slice(trial);
                     break;
@@ -182,13 +185,20 @@ impl Linkage {
     }
 }
 
-/// From the pose to the nearest pose of the target set: translation above rotation vector.
-fn residual(target: &Target, pose: &Isometry3<f64>) -> Vector6<f64> {
+/// From the pose to the nearest pose of the target set, translation above rotation vector, and
+/// how much of a motion of the tip the difference feels.
+fn residual(target: &Target, pose: &Isometry3<f64>) -> (Vector6<f64>, Matrix6<f64>) {
     let mut error = Vector6::zeros();
+    // Coordinates that are inside, and turns that are free, do not count: held, they would turn
+    // the quadratic convergence of a step into a crawl.
+    let mut share = Matrix6::zeros();
     let off = target.xyz - pose.translation.vector;
     for k in 0..3 {
         let within = target.xyz_within[k];
         error[k] = off[k] - off[k].clamp(-within, within);
+        if error[k] != 0.0 || within == 0.0 {
+            share[(k, k)] = 1.0;
+        }
     }
     match &target.orientation {
         Orientation::Free => {}
@@ -197,12 +207,19 @@ fn residual(target: &Target, pose: &Isometry3<f64>) -> Vector6<f64> {
             let turn = (wanted * pose.rotation.inverse()).scaled_axis();
             let angle = turn.norm();
             if angle > *within {
-                let turn = turn * ((angle - within) / angle);
-                error.fixed_rows_mut::<3>(3).copy_from(&turn);
+                let part = (angle - within) / angle;
+                error.fixed_rows_mut::<3>(3).copy_from(&(turn * part));
+                let along = turn / angle;
+                let m =
+                    along * along.transpose() * (1.0 - part) + nalgebra::Matrix3::identity() * part;
+                share.fixed_view_mut::<3, 3>(3, 3).copy_from(&m);
+            } else if *within == 0.0 {
+                share.fixed_view_mut::<3, 3>(3, 3).fill_with_identity();
             }
         }
         Orientation::Axes(cones) => {
             let mut sum = Vector3::zeros();
+            let mut m = nalgebra::Matrix3::zeros();
             for cone in cones {
                 let axis = pose.rotation * cone.tip.into_inner();
                 let cross = axis.cross(&cone.base);
@@ -220,10 +237,14 @@ fn residual(target: &Target, pose: &Isometry3<f64>) -> Vector6<f64> {
                         axis.cross(&other).normalize()
                     };
                     sum += about * (angle - cone.within);
+                    let part = (angle - cone.within) / angle.max(1e-300);
+                    let across = nalgebra::Matrix3::identity() - axis * axis.transpose();
+                    m += about * about.transpose() * (1.0 - part) + across * part;
                 }
             }
             error.fixed_rows_mut::<3>(3).copy_from(&sum);
+            share.fixed_view_mut::<3, 3>(3, 3).copy_from(&m);
         }
     }
-    error
+    (error, share)
 }

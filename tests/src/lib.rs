@@ -1,1 +1,3 @@
-//! Suite.
+//! One suite for the core, the complete search and the firmware.
+
+pub mod rotation;

@@ -1,6 +1,9 @@
 //! Published arms: sixteen postures for one pose, closed forms, and what the search says of them.
 
+#[path = "kinematic_checks/closed_form.rs"]
+mod closed_form;
 #[path = "../src/rotation.rs"]
+#[allow(dead_code)]
 mod rotation;
 
 use balk::kinematics::{meets, tip_pose};
@@ -13,6 +16,7 @@ use balk_core::fixed::{Arc, Direction, ONE};
 use balk_core::propagate::cell::{Cell, JointSpan};
 use balk_core::propagate::{Goal, Network};
 use balk_core::screen::{cells_for, limits};
+use closed_form::{horizontal_reaches, textbook_postures, textbook_reaches};
 use nalgebra::{Isometry3, Matrix3, Rotation3, Vector3};
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
@@ -67,6 +71,41 @@ fn refused(solver: &Solver, target: &Target, splits: u16) -> bool {
 fn apart(a: f64, b: f64) -> f64 {
     let turns = (a - b) / TAU;
     (turns - turns.round()).abs() * TAU
+}
+
+/// One pose of each file: the textbook arm's as printed in Fu, Gonzalez & Lee 1987, sec. 2.2; the
+/// modified table's (Craig, *Introduction to Robotics*, Fig. 3.21) and the horizontal arm's
+/// (Schilling, *Fundamentals of Robotics*, 1990) computed. The search finds postures for them.
+#[test]
+fn the_files_give_their_poses_and_the_search_takes_them_back() {
+    let cases: [(&str, Vec<f64>, [f64; 3]); 3] = [
+        (
+            "textbook_six",
+            degrees([90.0, 0.0, 90.0, 0.0, 0.0, 0.0]).to_vec(),
+            [-0.14909, 0.92112, 0.02032],
+        ),
+        (
+            "textbook_six_modified",
+            degrees([10.0, 20.0, 30.0, 40.0, 50.0, 60.0]).to_vec(),
+            [0.034131834330, 0.157408316859, -0.410490304931],
+        ),
+        (
+            "horizontal",
+            [&degrees([30.0, -60.0])[..], &[0.1], &degrees([45.0])].concat(),
+            [0.368060797, 0.5875, 0.577],
+        ),
+    ];
+    for (name, q, origin) in cases {
+        let arm = machine(name);
+        let pose = tip_pose(&arm, &q, 0);
+        let miss = (pose.translation.vector - Vector3::from(origin)).amax();
+        assert!(miss < 1e-9, "{name}: off by {miss}");
+        let target = target(&pose, 0.0, 0.0);
+        let solver = Solver::new(&arm, 0).unwrap();
+        let joints = decide(&solver, &target).expect(name);
+        assert!(meets(&arm, &target, &joints, 1e-9), "{name}");
+        assert!(!refused(&solver, &target, 32), "{name}");
+    }
 }
 
 /// Manseur & Doty, *A robot manipulator with 16 real inverse kinematic solution sets*, Int. J.
@@ -161,8 +200,7 @@ fn arc_about(solver: &Solver, variable: usize, value: f64, half: f64) -> (Arc, D
     (arc, direction(middle))
 }
 
-/// Whether propagation over spans about a posture keeps the posture. One rounding of the
-/// posture's own direction is allowed for by the width of what is left.
+/// Whether propagation over spans about a posture keeps the posture.
 fn keeps(solver: &Solver, target: &Target, posture: &[f64], half: f64) -> bool {
     let packed = pack_target(target, solver.pack.scale);
     let goal = Goal::new(&packed);
@@ -302,85 +340,6 @@ fn no_pose_has_more_postures_than_the_theory_allows() {
         }
         assert!(highest >= 8, "{name}: {highest}");
     }
-}
-
-/// Closed form of the textbook six-joint arm (Fu, Gonzalez & Lee, *Robotics*, McGraw-Hill 1987,
-/// sec. 2.3; derived here from the table): every posture, angles modulo a full turn. With the
-/// wrist stretched only the sum of the fourth and sixth angles counts; the fourth is then zero.
-fn textbook_postures(pose: &Isometry3<f64>) -> Vec<[f64; 6]> {
-    let [a2, a3, d2, d4, d6]: [f64; 5] = [0.4318, -0.02032, 0.14909, 0.43307, 0.05625];
-    let r = pose.rotation.to_rotation_matrix().into_inner();
-    let wrist = pose.translation.vector - d6 * r.column(2);
-    let across = wrist.x.powi(2) + wrist.y.powi(2) - d2 * d2;
-    let mut found = Vec::new();
-    if across < 0.0 {
-        return found;
-    }
-    for x in [across.sqrt(), -across.sqrt()] {
-        let first = wrist.y.atan2(wrist.x) - d2.atan2(x);
-        let y = -wrist.z;
-        let bent = (x * x + y * y - a2 * a2 - a3 * a3 - d4 * d4) / (2.0 * a2 * a3.hypot(d4));
-        if bent.abs() > 1.0 {
-            continue;
-        }
-        for fold in [bent.acos(), -bent.acos()] {
-            let third = d4.atan2(a3) + fold;
-            let (s3, c3) = third.sin_cos();
-            let second = y.atan2(x) - (a3 * s3 - d4 * c3).atan2(a2 + a3 * c3 + d4 * s3);
-            let about = |axis, angle| Rotation3::from_axis_angle(&axis, angle).into_inner();
-            let (ax, az) = (Vector3::x_axis(), Vector3::z_axis());
-            let forearm = about(az, first)
-                * about(ax, -PI / 2.0)
-                * about(az, second + third)
-                * about(ax, PI / 2.0);
-            let m = forearm.transpose() * r;
-            let bend = m[(0, 2)].hypot(m[(1, 2)]);
-            if bend < 1e-9 {
-                let sum =
-                    (m[(1, 0)] - m[(0, 1)] * m[(2, 2)]).atan2(m[(0, 0)] + m[(1, 1)] * m[(2, 2)]);
-                let fifth = if m[(2, 2)] > 0.0 { 0.0 } else { PI };
-                found.push([first, second, third, 0.0, fifth, sum]);
-                continue;
-            }
-            for sign in [1.0, -1.0] {
-                found.push([
-                    first,
-                    second,
-                    third,
-                    (sign * m[(1, 2)]).atan2(sign * m[(0, 2)]),
-                    (sign * bend).atan2(m[(2, 2)]),
-                    (sign * m[(2, 1)]).atan2(-sign * m[(2, 0)]),
-                ]);
-            }
-        }
-    }
-    found
-}
-
-/// Whether the angle, give or take full turns, is within limits widened by `spare`.
-fn allowed(limits: Option<[f64; 2]>, angle: f64, spare: f64) -> bool {
-    let Some([lo, hi]) = limits else { return true };
-    let (lo, hi) = (lo - spare, hi + spare);
-    angle + ((lo - angle) / TAU).ceil() * TAU <= hi
-}
-
-/// What the closed form says of a pose: whether some posture is within the limits widened by
-/// `spare` radians.
-fn textbook_reaches(arm: &Machine, pose: &Isometry3<f64>, spare: f64) -> bool {
-    textbook_postures(pose).iter().any(|q| {
-        let stretched = q[4] == 0.0 && q[3] == 0.0;
-        let limits = |k: usize| arm.joints[k].limits;
-        (0..6).all(|k| match k {
-            3 if stretched => true,
-            5 if stretched => {
-                let sum = limits(3)
-                    .zip(limits(5))
-                    .map(|(a, b)| [a[0] + b[0], a[1] + b[1]]);
-                allowed(sum, q[5], spare)
-            }
-            _ => allowed(limits(k), q[k], spare),
-        })
-    })
 }
 
 #[test]
@@ -539,29 +498,6 @@ fn limits_beside_the_postures_of_the_textbook_poses_are_told() {
             }
         }
     }
-}
-
-/// Closed form of the horizontal arm (Schilling, *Fundamentals of Robotics*, 1990, from memory;
-/// derived here from the table): an upside-down tool, two turning joints in the plane and a
-/// stroke; the last joint has no limits.
-fn horizontal_reaches(arm: &Machine, pose: &Isometry3<f64>, spare: f64) -> bool {
-    let [l1, l2]: [f64; 2] = [0.425, 0.375];
-    let p = pose.translation.vector;
-    let m = pose.rotation.to_rotation_matrix().into_inner();
-    if m[(2, 2)] > 0.0 || m[(0, 2)].hypot(m[(1, 2)]) > 1e-9 {
-        return false;
-    }
-    let stroke = 0.877 - 0.2 - p.z;
-    let [lo, hi] = arm.joints[2].limits.expect("a sliding joint has limits");
-    let bent = (p.x * p.x + p.y * p.y - l1 * l1 - l2 * l2) / (2.0 * l1 * l2);
-    if stroke < lo - spare || stroke > hi + spare || bent.abs() > 1.0 {
-        return false;
-    }
-    // Turned upside down, the second joint turns the other way.
-    [bent.acos(), -bent.acos()].into_iter().any(|fold| {
-        let first = p.y.atan2(p.x) - (l2 * fold.sin()).atan2(l1 + l2 * fold.cos());
-        allowed(arm.joints[0].limits, first, spare) && allowed(arm.joints[1].limits, -fold, spare)
-    })
 }
 
 #[test]

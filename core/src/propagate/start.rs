@@ -108,10 +108,14 @@ fn from_half_sine(half: i32) -> (Interval, Interval) {
     (cosine, sine)
 }
 
-/// The columns of the rotation matrix of a quaternion of any length.
-fn columns([w, x, y, z]: [i32; 4]) -> [Vector; 3] {
-    // Halved, so that sums of four products stay below 2^61.
-    let [w, x, y, z] = [w, x, y, z].map(|q| Interval::point(q / 2));
+/// The columns of the rotation matrix of a quaternion; no bounds when a component exceeds one.
+///
+/// Sums of four products of components stay within 2^62.
+fn columns(quaternion: [i32; 4]) -> [Vector; 3] {
+    if quaternion.iter().any(|q| q.unsigned_abs() > ONE as u32) {
+        return [[Interval::UNIT; 3]; 3];
+    }
+    let [w, x, y, z] = quaternion.map(Interval::point);
     let square = |a: Interval| a.square();
     let norm = square(w).plus(square(x)).plus(square(y)).plus(square(z));
     let diagonal = |a: Interval, b: Interval, c: Interval| {
