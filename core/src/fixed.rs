@@ -535,22 +535,29 @@ impl Arc {
         }
     }
 
+    /// The width of an arc that is not full, as a direction; it may be off by 2^-28.5 radians.
+    #[inline]
+    fn turn(self) -> Direction {
+        Direction::shorten(self.hi.product(self.lo.conjugate()))
+    }
+
+    /// Whether moving the ends outward could make them pass each other.
+    #[inline]
+    pub fn is_nearly_full(self) -> bool {
+        self.full || self.turn().nearly_full()
+    }
+
     /// Every sum of an angle of each.
     pub fn plus(self, other: Arc) -> Arc {
-        if self.full || other.full {
+        if self.is_nearly_full() || other.is_nearly_full() {
             return Arc::FULL;
         }
-        let (own, others) = (
-            Direction::shorten(self.hi.product(self.lo.conjugate())),
-            Direction::shorten(other.hi.product(other.lo.conjugate())),
-        );
-        if own.nearly_full() || others.nearly_full() {
-            return Arc::FULL;
-        }
-        // The widths together must leave room for rounding before a full turn.
-        let room = own.conjugate();
+        // The widths together must leave 2^-24 radians before a full turn: rounding and moving the
+        // ends outward takes less than 2^-25.
+        const ROOM: Direction = Direction { x: ONE, y: 64 };
+        let (own, others) = (self.turn(), other.turn());
         if Direction::EAST.half(own) != 0
-            && !Direction::EAST.ordered(others.tilted(true).tilted(true), room)
+            && !Direction::EAST.ordered(others.turned(ROOM), own.conjugate())
         {
             return Arc::FULL;
         }

@@ -5,7 +5,7 @@ use crate::certificate::{Combination, Range, Refuted};
 use crate::fixed::{FRACTION_BITS, Interval, ONE, root_up};
 use crate::machine::Variable;
 use crate::propagate::cell::Vector;
-use crate::propagate::{Goal, MOST_FEATURES, MOST_JOINTS, Network, Spans};
+use crate::propagate::{Feature, Goal, MOST_FEATURES, MOST_JOINTS, Network, Rules, Spans};
 use crate::rows::{Expansion, Form, Linear};
 use crate::target::MOST_CONES;
 use crate::simplex::{Outcome, Simplex};
@@ -39,9 +39,14 @@ impl Rows<'_, '_> {
 
     /// The rows of a group; fewer where there are none.
     fn group(&self, group: usize) -> Vec<Linear, 3> {
-        let features = self.network.features().len();
-        if group >= features {
-            return self.turn_limit(group - features);
+        let features = self.network.features();
+        let joint = matches!(features.get(group), Some(Feature::Axis(_) | Feature::Origin(_)));
+        let family = if joint { Rules::JOINT_ROWS } else { Rules::TIP_ROWS };
+        if !self.network.rules().has(family) {
+            return Vec::new();
+        }
+        if group >= features.len() {
+            return self.turn_limit(group - features.len());
         }
         if self.network.moved_by(group) == 0 {
             return Vec::new();
@@ -154,6 +159,9 @@ pub fn relax(
     simplex: &mut NodeSimplex,
     pivots: u32,
 ) -> Result<Refuted, Relaxed> {
+    if network.chain().joints.is_empty() {
+        return Err(Relaxed::Feasible);
+    }
     let rows = Rows {
         network,
         expansion: Expansion::new(network, spans),
@@ -187,7 +195,9 @@ pub fn relax(
             break;
         }
     }
-    program.shave(spans, network.chain().variables);
+    if network.rules().has(Rules::SHAVING) {
+        program.shave(spans, network.chain().variables);
+    }
     Err(Relaxed::Feasible)
 }
 

@@ -200,7 +200,10 @@ impl Expansion {
             let [x, y, _] = view;
             let (cx, cy) = (half_way(*x), half_way(*y));
             let (rx, ry) = ((x.width() + 1) / 2 + 1, (y.width() + 1) / 2 + 1);
-            let bent = joint.bend(middle.sine);
+            let own = self.boxes[variable];
+            let bent = joint.bend(
+                own.lower.zip(own.upper).map_or(ONE as i64, |(lo, hi)| hi.max(-lo)),
+            );
             for (form, &[l0, l1, _]) in forms.iter_mut().zip(&middle.rotation) {
                 // L J a = -l0 a_y + l1 a_x, L P a = l0 a_x + l1 a_y.
                 let along = rounded(l1 as i64 * cx - l0 as i64 * cy) as i64;
@@ -210,7 +213,7 @@ impl Expansion {
                     + 2;
                 // What the coefficient may be off, times the sine.
                 let error = ((left * middle.sine) >> FRACTION_BITS)
-                    + ((along.abs() * bent) >> FRACTION_BITS)
+                    + scaled(along.abs(), bent)
                     + 2;
                 // Minus one minus cosine, which may be up to two, times what lies across.
                 let across = x.scale(l0).plus(y.scale(l1)).round(0);
@@ -249,11 +252,11 @@ impl Form {
     /// The form's value is at most one in size.
     pub fn add(&mut self, other: &Form, factor: i64, slack: i64) {
         for (own, c) in self.coefficients.iter_mut().zip(&other.coefficients) {
-            *own += (c * factor + (1 << (FRACTION_BITS - 1))) >> FRACTION_BITS;
+            *own += scaled(*c, factor);
         }
         // Remainders of wide nodes may be many times one.
-        let scaled = |bound: i64| bound as i128 * factor as i128;
-        let (a, b) = (scaled(other.lo), scaled(other.hi));
+        let product = |bound: i64| bound as i128 * factor as i128;
+        let (a, b) = (product(other.lo), product(other.hi));
         // One unit of rounding per coefficient, whose unknown is at most one in size.
         let slack = slack + MOST_JOINTS as i64;
         self.lo += (a.min(b) >> FRACTION_BITS) as i64 - slack;
@@ -310,25 +313,37 @@ impl Joint {
     }
 
     /// Bound of `|sin(e) - k sin(d)|`, where the joint deviates by `e` from its middle when its
-    /// variable deviates by `d`; `sine` bounds `|sin(e)|`.
+    /// variable deviates by `d`; `sine` bounds `|sin(d)|`, and `d` is at most a quarter turn
+    /// unless that is one.
     fn bend(&self, sine: i64) -> i64 {
         if self.is_plain() {
             return 0;
         }
         let one = ONE as i64;
-        // The angle at variable zero is known to within its arc, middles to within rounding.
-        let loose = self.turn.about(self.turn.middle()).sine().magnitude() + 16;
+        let cube = |x: i64| scaled(scaled(x, x), x) + 3;
         let times = self.multiple.unsigned_abs() as i64;
-        if times == 1 {
-            loose
-        } else if sine + loose < one * 9 / 10 {
-            // x - sin x <= x^3 / 6 and x <= (pi / 2) sin x.
-            let sine = sine + loose;
-            ((((sine * sine) >> FRACTION_BITS) * sine) >> FRACTION_BITS) + loose + 16
+        // |sin(k d) - k sin d| <= |k d|^3 / 6 + k |d|^3 / 6, and d <= (pi / 2) sin d.
+        let far = times * sine;
+        let bent = match times {
+            0 | 1 => 0,
+            _ if far < one => cube(far),
+            _ => one + far,
+        };
+        // e is k d but for the arc of the angle at variable zero and the rounding of middles:
+        // sines of angles a apart differ by 2 sin(a / 2) <= sin a + (sin a)^3 / 4.
+        let loose = self.turn.about(self.turn.middle()).sine().magnitude() + 16 + 4 * times;
+        bent + if loose < one * 9 / 10 {
+            loose + cube(loose) / 4 + 1
         } else {
-            one * (1 + times)
+            2 * one
         }
     }
+}
+
+/// Product with a number of 30 fraction bits, rounded down. Multiples of wide nodes need more than
+/// 64 bits on the way.
+fn scaled(a: i64, b: i64) -> i64 {
+    ((a as i128 * b as i128) >> FRACTION_BITS) as i64
 }
 
 fn half_way(i: Interval) -> i64 {
@@ -366,10 +381,10 @@ impl JointSpan {
 impl Arc {
     /// The arc as seen from a direction inside it.
     pub fn about(self, middle: Direction) -> Arc {
-        let back = middle.conjugate();
-        Arc {
-            full: self.full,
-            ..Arc::new(self.lo.turned(back), self.hi.turned(back)).normalised()
+        if self.is_nearly_full() {
+            return Arc::FULL;
         }
+        let back = middle.conjugate();
+        Arc::new(self.lo.turned(back), self.hi.turned(back)).normalised()
     }
 }

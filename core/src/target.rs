@@ -25,7 +25,7 @@ pub enum Orientation {
     /// Close to one orientation.
     Near {
         /// Wanted orientation as a quaternion (w, x, y, z) of about unit length; components beyond
-        /// one make it unknown, and nothing is refused for it.
+        /// one or a length below one half make it unknown, and nothing is refused for it.
         quaternion: [i32; 4],
         /// Sine of half the greatest rotation angle, rounded up, at most one.
         half_sine: i32,

@@ -18,6 +18,8 @@ pub type Packed = Machine<MOST_JOINTS>;
 const ANGLE_MARGIN: f64 = 4.0 / (1u64 << 30) as f64;
 /// Largest numerator and denominator of a ratio between a joint and the one it follows.
 const MOST_RATIO: i32 = 16;
+/// Largest multiple of a variable that the core takes.
+const MOST_MULTIPLE: f64 = i8::MAX as f64;
 
 /// Why a chain cannot be packed.
 #[derive(Clone, Debug, thiserror::Error)]
@@ -37,7 +39,7 @@ pub enum PackError {
         joint: String,
     },
     /// The ratio has no small fraction and the leader no limits.
-    #[error("joint {joint:?}: ratio {ratio} is not a fraction with numerator and denominator up to {MOST_RATIO}, which a joint without limits needs")]
+    #[error("joint {joint:?}: ratio {ratio} is not a fraction with numerator and denominator up to {MOST_RATIO} and a common denominator with the leader's other followers up to {MOST_MULTIPLE}, which a joint without limits needs")]
     Ratio {
         /// The follower.
         joint: String,
@@ -144,7 +146,7 @@ impl Stretch {
 /// Rotation that takes the third axis to `axis`.
 fn to_axis(axis: &Vector3<f64>) -> UnitQuaternion<f64> {
     // Signed permutations where possible, so that the integers are exact.
-    let turn = if axis.z.abs() >= 1.0 - 1e-15 {
+    let turn = if axis.x.hypot(axis.y) < 1e-15 {
         if axis.z > 0.0 {
             Matrix3::identity()
         } else {
@@ -240,7 +242,8 @@ pub fn pack(machine: &model::Machine, tip: usize) -> Result<Pack, PackError> {
     }
     for &index in &moving {
         if machine.joints[index].kind == Kind::Prismatic {
-            reach = reach.max(leader(machine, index).2.abs());
+            let hold = hold(machine, index, &drives)?;
+            reach = reach.max(hold.rest.abs() + hold.residual);
         }
     }
     if reach <= 0.0 {
@@ -258,31 +261,13 @@ pub fn pack(machine: &model::Machine, tip: usize) -> Result<Pack, PackError> {
         exponent,
     };
     for (k, &index) in moving.iter().enumerate() {
-        let joint = &machine.joints[index];
-        let (lead, ratio, offset) = leader(machine, index);
-        let variable = drives
-            .iter()
-            .position(|d: &Drive| d.joint == lead)
-            .unwrap_or(0);
-        let drive = &drives[variable];
-        // value = ratio * (multiple * variable + drive.offset) + offset
-        let exact = ratio * drive.multiple;
-        let multiple = exact.round();
-        let rest = ratio * drive.offset + offset;
-        let residual = if exact == multiple {
-            0.0
-        } else {
-            let most = drive.limits[0].abs().max(drive.limits[1].abs());
-            if !most.is_finite() {
-                return Err(PackError::Ratio {
-                    joint: joint.name.clone(),
-                    ratio,
-                });
-            }
-            // |exact - multiple| * |variable|
-            (exact - multiple).abs() * (most + drive.offset.abs()) / drive.multiple.abs()
-        };
-        let (motion, turn, shift) = match joint.kind {
+        let Hold {
+            variable,
+            multiple,
+            rest,
+            residual,
+        } = hold(machine, index, &drives)?;
+        let (motion, turn, shift) = match machine.joints[index].kind {
             Kind::Prismatic => (
                 Motion::Slide,
                 Arc::FULL,
@@ -302,13 +287,13 @@ pub fn pack(machine: &model::Machine, tip: usize) -> Result<Pack, PackError> {
             motion,
             placement: placement(&stretches[k], scale),
             variable: variable as u8,
-            multiple: multiple as i8,
+            multiple,
             turn,
             shift,
         });
     }
-    let mut drives = drives;
-    for (v, (kind, drive)) in variables.iter().zip(&mut drives).enumerate() {
+    let mut packed_drives = drives.clone();
+    for (v, (kind, drive)) in variables.iter().zip(&mut packed_drives).enumerate() {
         // A variable that drives one joint alone takes the joint's shift into its own origin.
         let single = packed
             .joints
@@ -318,9 +303,9 @@ pub fn pack(machine: &model::Machine, tip: usize) -> Result<Pack, PackError> {
             == 1;
         if let (true, Kind::Revolute) = (single, kind) {
             for (k, joint) in packed.joints.iter_mut().enumerate() {
-                if joint.variable as usize == v && joint.multiple == 1 {
-                    let (_, ratio, offset) = leader(machine, moving[k]);
-                    drive.offset -= (ratio * drive.offset + offset + shifts[k]) / ratio;
+                let hold = hold(machine, moving[k], &drives)?;
+                if hold.variable == v && hold.multiple == 1 && hold.residual == 0.0 {
+                    drive.offset = -(hold.rest + shifts[k]) * drive.multiple;
                     joint.turn = Arc::new(Direction::EAST, Direction::EAST);
                 }
             }
@@ -345,7 +330,43 @@ pub fn pack(machine: &model::Machine, tip: usize) -> Result<Pack, PackError> {
     Ok(Pack {
         machine: packed,
         scale,
-        drives,
+        drives: packed_drives,
+    })
+}
+
+/// How a joint hangs on its variable: its value is `multiple * variable + rest`, give or take the
+/// residual.
+struct Hold {
+    variable: usize,
+    multiple: i8,
+    rest: f64,
+    residual: f64,
+}
+
+fn hold(machine: &model::Machine, joint: usize, drives: &[Drive]) -> Result<Hold, PackError> {
+    let (lead, ratio, rest) = leader(machine, joint);
+    let variable = drives.iter().position(|d| d.joint == lead).unwrap_or(0);
+    let drive = &drives[variable];
+    let exact = ratio * drive.multiple;
+    let multiple = exact.round().clamp(-MOST_MULTIPLE, MOST_MULTIPLE);
+    let residual = if exact == multiple {
+        0.0
+    } else {
+        let most = drive.limits[0].abs().max(drive.limits[1].abs());
+        if !most.is_finite() {
+            return Err(PackError::Ratio {
+                joint: machine.joints[joint].name.clone(),
+                ratio,
+            });
+        }
+        // |exact - multiple| * |variable|
+        (exact - multiple).abs() * most / drive.multiple
+    };
+    Ok(Hold {
+        variable,
+        multiple: multiple as i8,
+        rest,
+        residual,
     })
 }
 
@@ -406,7 +427,10 @@ fn variables(
         }
         let denominator = fraction(ratio).1 as f64;
         if let Some(known) = drives.iter_mut().find(|d| d.joint == lead) {
-            known.multiple *= denominator / gcd(known.multiple, denominator);
+            let common = known.multiple * denominator / gcd(known.multiple, denominator);
+            if common <= MOST_MULTIPLE {
+                known.multiple = common;
+            }
             continue;
         }
         let limits = range(machine, lead);
@@ -474,6 +498,8 @@ fn placement(stretch: &Stretch, scale: f64) -> Placement {
     let back = rotation.inverse_transform_vector(&t);
     // The largest change of a unit vector by the angle, and three roundings of half a unit.
     let chord = 2.0 * (angle.min(PI) / 2.0).sin();
+    // When that may be one or more, knowing only that it is a unit vector is worth more.
+    let known = if chord < 1.0 { 1.0 } else { 0.0 };
     let size = t.norm();
     let square = |v: f64| v * v * (1u64 << 60) as f64;
     Placement {
@@ -481,10 +507,10 @@ fn placement(stretch: &Stretch, scale: f64) -> Placement {
             [0, 1, 2].map(|j| {
                 let entry = rotation[(i, j)];
                 let snapped = if entry.abs() < 1e-15 { 0.0 } else { entry };
-                (snapped * ONE as f64).round() as i32
+                (known * snapped * ONE as f64).round() as i32
             })
         }),
-        turn_slack: 1 + (chord * ONE as f64).ceil() as i32,
+        turn_slack: 1 + (chord.min(1.0) * ONE as f64).ceil() as i32,
         origin: [0, 1, 2].map(|k| bounds(t[k], xyz)),
         back: [0, 1, 2].map(|k| bounds(back[k], xyz + chord * size)),
         // 2^12 units are several roundings of a double near one.

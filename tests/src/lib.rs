@@ -1,3 +1,15 @@
 //! One suite for the core, the complete search and the firmware.
 
 pub mod rotation;
+
+/// Measurements: each prints a table or is run by a test.
+pub mod measure {
+    pub mod ablation;
+    pub mod base_frame;
+    pub mod families;
+    pub mod lifted;
+    pub mod simplex;
+    pub mod soundness;
+}
+pub mod families;
+pub mod random;

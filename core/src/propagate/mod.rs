@@ -49,6 +49,13 @@ impl Rules {
     /// Turning by direction and radius, not only by cosine and sine.
     pub const SECTOR: Rules = Rules(64);
 
+    /// First-order rows of the tip and of the turn to the wanted orientation.
+    pub const TIP_ROWS: Rules = Rules(128);
+    /// First-order rows of the joints' origins and axes.
+    pub const JOINT_ROWS: Rules = Rules(256);
+    /// Cutting off the ends of spans that the rows show empty.
+    pub const SHAVING: Rules = Rules(512);
+
     /// Whether all of `other` are among these.
     pub fn has(self, other: Rules) -> bool {
         self.0 & other.0 == other.0
@@ -431,6 +438,11 @@ impl<'a> Network<'a> {
     /// The chain.
     pub fn chain(&self) -> Chain<'a> {
         self.chain
+    }
+
+    /// The rules in use.
+    pub fn rules(&self) -> Rules {
+        self.rules
     }
 
     /// The prepared target.

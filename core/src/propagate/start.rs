@@ -108,16 +108,20 @@ fn from_half_sine(half: i32) -> (Interval, Interval) {
     (cosine, sine)
 }
 
-/// The columns of the rotation matrix of a quaternion; no bounds when a component exceeds one.
+/// The columns of the rotation matrix of a quaternion; none when a component exceeds one or the
+/// length is below one half.
 ///
 /// Sums of four products of components stay within 2^62.
-fn columns(quaternion: [i32; 4]) -> [Vector; 3] {
+fn columns(quaternion: [i32; 4]) -> Option<[Vector; 3]> {
     if quaternion.iter().any(|q| q.unsigned_abs() > ONE as u32) {
-        return [[Interval::UNIT; 3]; 3];
+        return None;
     }
     let [w, x, y, z] = quaternion.map(Interval::point);
     let square = |a: Interval| a.square();
     let norm = square(w).plus(square(x)).plus(square(y)).plus(square(z));
+    if norm.lo < ONE_SQUARED >> 2 {
+        return None;
+    }
     let diagonal = |a: Interval, b: Interval, c: Interval| {
         square(w).plus(square(a)).minus(square(b)).minus(square(c))
     };
@@ -130,7 +134,7 @@ fn columns(quaternion: [i32; 4]) -> [Vector; 3] {
         }
     };
     let entry = |p: Product| p.over(norm).map_or(Interval::UNIT, |i| i);
-    [
+    Some([
         [
             entry(diagonal(x, y, z)),
             entry(off(x, y, z, true)),
@@ -146,7 +150,7 @@ fn columns(quaternion: [i32; 4]) -> [Vector; 3] {
             entry(off(y, z, x, false)),
             entry(diagonal(z, x, y)),
         ],
-    ]
+    ])
 }
 
 /// A unit vector given to within two units.
@@ -185,7 +189,12 @@ impl Goal {
                 half_sine,
             } => {
                 let (cosine, sine) = from_half_sine(*half_sine);
-                let wanted = columns(*quaternion);
+                let Some(wanted) = columns(*quaternion) else {
+                    return Goal::Axes {
+                        position,
+                        cones: Vec::new(),
+                    };
+                };
                 Goal::Near {
                     position,
                     axes: wanted.map(|column| column.map(|entry| spread(entry, cosine, sine))),

@@ -1,0 +1,103 @@
+//! Measurements, one command each: every figure of `tests/README.md` comes from here.
+
+use balk_tests::families::Kind;
+use balk_tests::measure;
+use clap::{Parser, Subcommand};
+
+#[derive(Parser)]
+#[command(name = "measure", version, about = "Measure balk: every command prints a table")]
+struct Arguments {
+    #[command(subcommand)]
+    command: Command,
+}
+
+#[derive(Subcommand)]
+enum Command {
+    /// What each rule, row and heuristic gains
+    Ablation {
+        /// Kinds of target
+        #[arg(long, value_enum, value_delimiter = ',', default_values_t = Kind::ALL)]
+        kinds: Vec<Kind>,
+        /// Targets per arm and kind, of which the unreachable are used
+        #[arg(long, default_value_t = 600)]
+        targets: usize,
+        /// Seed of the targets
+        #[arg(long, default_value_t = 11)]
+        seed: u64,
+    },
+    /// Complete decision and screening on the three arms, beside common checks
+    Families {
+        /// Kinds of target
+        #[arg(long, value_enum, value_delimiter = ',', default_values_t = Kind::ALL)]
+        kinds: Vec<Kind>,
+        /// Targets per arm and kind
+        #[arg(long, default_value_t = 10_000)]
+        targets: usize,
+        /// Of those, how many the damped least squares is tried on
+        #[arg(long, default_value_t = 500)]
+        baseline: usize,
+        /// Node budget of a decision
+        #[arg(long, default_value_t = 5000)]
+        nodes: u64,
+        /// Seed of the targets
+        #[arg(long, default_value_t = 7)]
+        seed: u64,
+    },
+    /// Lifted envelope and hull rows: what they would add (hours with large numbers)
+    Lifted {
+        /// Root nodes per arm and kind
+        #[arg(long, default_value_t = 5)]
+        roots: u64,
+        /// Nodes below them
+        #[arg(long, default_value_t = 2)]
+        below: usize,
+        /// Whole decisions per arm and kind
+        #[arg(long, default_value_t = 20)]
+        targets: usize,
+        /// Kinds of target: pose, cone, box, point
+        #[arg(long, value_delimiter = ',', default_value = "pose,cone,box,point")]
+        kinds: Vec<String>,
+    },
+    /// The simplex beside a general-purpose solver on the same random systems
+    Simplex {
+        /// Systems per family and size
+        #[arg(long, default_value_t = 200)]
+        systems: u32,
+        /// Seed of the systems
+        #[arg(long, default_value_t = 1)]
+        seed: u64,
+    },
+}
+
+fn main() {
+    match Arguments::parse().command {
+        Command::Ablation {
+            kinds,
+            targets,
+            seed,
+        } => measure::ablation::run(&kinds, targets, seed),
+        Command::Families {
+            kinds,
+            targets,
+            baseline,
+            nodes,
+            seed,
+        } => measure::families::run(&measure::families::Options {
+            kinds,
+            targets,
+            baseline,
+            nodes,
+            seed,
+        }),
+        Command::Lifted {
+            roots,
+            below,
+            targets,
+            kinds,
+        } => {
+            let kinds: Vec<&str> = kinds.iter().map(String::as_str).collect();
+            measure::lifted::run(roots, below, targets, &kinds);
+        }
+        Command::Simplex { systems, seed } => measure::simplex::run(systems, seed),
+    }
+}

@@ -1,0 +1,150 @@
+//! Targets that a planted posture meets: none may be refused or called unreachable.
+
+use crate::random::{Sample, posture, target};
+use balk::model::Target;
+use balk::search::{Screening, Solver, Verdict};
+use rand::SeedableRng;
+use rand_chacha::ChaCha8Rng;
+use std::num::NonZero;
+use std::thread;
+
+/// Splits at which refusals are tried.
+const SPLITS: [u16; 3] = [1, 4, 16];
+
+/// What a run found.
+#[derive(Clone, Debug, Default)]
+pub struct Tally {
+    /// Machines drawn that the packer takes.
+    pub machines: u32,
+    /// Targets, each met by a posture.
+    pub targets: u32,
+    /// Refused at each of the splits.
+    pub refused: [u32; 3],
+    /// Called unreachable.
+    pub unreachable: u32,
+    /// Called reachable.
+    pub reachable: u32,
+    /// The first few failures: everything needed to repeat them.
+    pub failures: Vec<String>,
+}
+
+impl Tally {
+    /// Number of false answers.
+    pub fn wrong(&self) -> u32 {
+        self.refused.iter().sum::<u32>() + self.unreachable
+    }
+
+    fn plus(mut self, other: Tally) -> Tally {
+        self.machines += other.machines;
+        self.targets += other.targets;
+        for (own, others) in self.refused.iter_mut().zip(other.refused) {
+            *own += others;
+        }
+        self.unreachable += other.unreachable;
+        self.reachable += other.reachable;
+        self.failures.extend(other.failures);
+        self.failures.truncate(8);
+        self
+    }
+}
+
+/// One machine with the given seed and `targets` planted targets.
+pub fn machine(seed: u64, targets: u32, nodes: u64) -> Tally {
+    let mut random = ChaCha8Rng::seed_from_u64(seed);
+    let mut tally = Tally::default();
+    let Some(sample) = Sample::draw(&mut random) else {
+        return tally;
+    };
+    let Ok(solver) = Solver::new(&sample.written, 0) else {
+        return tally;
+    };
+    tally.machines = 1;
+    for number in 0..targets {
+        let Some(values) = posture(&mut random, &sample.written) else {
+            break;
+        };
+        let Some(wanted) = target(&mut random, &sample.built, &values) else {
+            break;
+        };
+        let before = tally.wrong();
+        judge(&solver, &wanted, nodes, &mut tally);
+        if tally.wrong() > before && tally.failures.len() < 2 {
+            tally.failures.push(format!(
+                "seed {seed} target {number} (tolerances {}): {}; posture {values:?}; {wanted:?}",
+                sample
+                    .written
+                    .joints
+                    .iter()
+                    .any(|j| j.tolerance.angle > 0.0),
+                followers(&solver),
+            ));
+        }
+    }
+    tally
+}
+
+fn followers(solver: &Solver) -> String {
+    let joints = &solver.pack.machine.joints;
+    let parts: Vec<String> = joints
+        .iter()
+        .map(|j| format!("{:?} {} x{}", j.motion, j.variable, j.multiple))
+        .collect();
+    parts.join(", ")
+}
+
+fn judge(solver: &Solver, wanted: &Target, nodes: u64, tally: &mut Tally) {
+    tally.targets += 1;
+    for (count, splits) in tally.refused.iter_mut().zip(SPLITS) {
+        *count += u32::from(matches!(
+            solver.screen(wanted, splits),
+            Screening::Refused { .. }
+        ));
+    }
+    match solver.decide(wanted, nodes).verdict {
+        Verdict::Unreachable { .. } => tally.unreachable += 1,
+        Verdict::Reachable { .. } => tally.reachable += 1,
+        Verdict::Undecided { .. } => {}
+    }
+}
+
+/// Many machines on every processor; the same answers for any number of them.
+pub fn run(machines: u64, targets: u32, nodes: u64, seed: u64) -> Tally {
+    let threads = thread::available_parallelism().map_or(1, NonZero::get);
+    let share = |first: usize| -> Vec<(u64, Tally)> {
+        (first as u64..machines)
+            .step_by(threads)
+            .map(|i| {
+                let seed = seed.wrapping_mul(1_000_003).wrapping_add(i);
+                (i, machine(seed, targets, nodes))
+            })
+            .collect()
+    };
+    let mut tallies: Vec<(u64, Tally)> = thread::scope(|scope| {
+        let workers: Vec<_> = (0..threads)
+            .map(|first| scope.spawn(move || share(first)))
+            .collect();
+        let results = workers.into_iter().map(|w| w.join());
+        results
+            .flat_map(|r| r.unwrap_or_else(|panic| std::panic::resume_unwind(panic)))
+            .collect()
+    });
+    tallies.sort_by_key(|(i, _)| *i);
+    tallies
+        .into_iter()
+        .fold(Tally::default(), |sum, (_, tally)| sum.plus(tally))
+}
+
+/// Runs and prints one table, then what is needed to repeat the first failures.
+pub fn print(machines: u64, targets: u32, nodes: u64, seed: u64) {
+    let tally = run(machines, targets, nodes, seed);
+    println!("| machines | targets | refused at 1 / 4 / 16 splits | unreachable | reachable |");
+    println!("|{}", "---|".repeat(5));
+    let [one, four, sixteen] = tally.refused;
+    println!(
+        "| {} | {} | {one} / {four} / {sixteen} | {} | {} |",
+        tally.machines, tally.targets, tally.unreachable, tally.reachable
+    );
+    for failure in &tally.failures {
+        println!("\n{failure}");
+    }
+}
