@@ -1,5 +1,7 @@
 //! One suite for the core, the complete search and the firmware.
 
+pub mod families;
+pub mod random;
 pub mod rotation;
 
 /// Measurements: each prints a table or is run by a test.
@@ -7,9 +9,8 @@ pub mod measure {
     pub mod ablation;
     pub mod base_frame;
     pub mod families;
+    pub mod kernel;
     pub mod lifted;
     pub mod simplex;
     pub mod soundness;
 }
-pub mod families;
-pub mod random;

@@ -43,6 +43,8 @@ enum Command {
         #[arg(long, default_value_t = 7)]
         seed: u64,
     },
+    /// The certificate kernel against plain reasoning on every small system
+    Kernel,
     /// Lifted envelope and hull rows: what they would add (hours with large numbers)
     Lifted {
         /// Root nodes per arm and kind
@@ -57,6 +59,21 @@ enum Command {
         /// Kinds of target: pose, cone, box, point
         #[arg(long, value_delimiter = ',', default_value = "pose,cone,box,point")]
         kinds: Vec<String>,
+    },
+    /// Planted postures: nothing may be refused or called unreachable
+    Soundness {
+        /// Random machines
+        #[arg(long, default_value_t = 1000)]
+        machines: u64,
+        /// Targets per machine
+        #[arg(long, default_value_t = 10)]
+        targets: u32,
+        /// Node budget of a decision
+        #[arg(long, default_value_t = 8)]
+        nodes: u64,
+        /// Seed of machines and targets
+        #[arg(long, default_value_t = 1)]
+        seed: u64,
     },
     /// The simplex beside a general-purpose solver on the same random systems
     Simplex {
@@ -89,6 +106,7 @@ fn main() {
             nodes,
             seed,
         }),
+        Command::Kernel => measure::kernel::run(),
         Command::Lifted {
             roots,
             below,
@@ -98,6 +116,12 @@ fn main() {
             let kinds: Vec<&str> = kinds.iter().map(String::as_str).collect();
             measure::lifted::run(roots, below, targets, &kinds);
         }
+        Command::Soundness {
+            machines,
+            targets,
+            nodes,
+            seed,
+        } => measure::soundness::print(machines, targets, nodes, seed),
         Command::Simplex { systems, seed } => measure::simplex::run(systems, seed),
     }
 }

@@ -2,11 +2,9 @@
 
 #[path = "kinematic_checks/closed_form.rs"]
 mod closed_form;
-#[path = "../src/rotation.rs"]
-#[allow(dead_code)]
-mod rotation;
 
 use balk::kinematics::{meets, tip_pose};
+use balk_tests::rotation;
 use balk::model::{Machine, Orientation, Target};
 use balk::pack::pack_target;
 use balk::posture::Linkage;

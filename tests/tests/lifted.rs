@@ -11,16 +11,12 @@ use nalgebra::{Matrix3, Rotation3, Unit, Vector3};
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 
-#[path = "../src/measure/lifted/mod.rs"]
-#[allow(dead_code, reason = "the tables are printed by another target")]
-mod lifted;
-
-use lifted::envelope::{Plane, chord, product, secant, sphere_tangent, tangent};
-use lifted::form::Form;
-use lifted::hull;
-use lifted::program::Families;
-use lifted::relations::violated;
-use lifted::unknowns::Lifted;
+use balk_tests::measure::lifted::envelope::{Plane, chord, product, secant, sphere_tangent, tangent};
+use balk_tests::measure::lifted::form::Form;
+use balk_tests::measure::lifted::hull;
+use balk_tests::measure::lifted::program::Families;
+use balk_tests::measure::lifted::relations::violated;
+use balk_tests::measure::lifted::unknowns::Lifted;
 
 fn interval(lo: f64, hi: f64) -> Interval {
     Interval {
@@ -292,7 +288,7 @@ fn random_rotation(rng: &mut ChaCha8Rng) -> Rotation3<f64> {
             break Unit::new_normalize(v);
         }
     };
-    Rotation3::from_axis_angle(&axis, rng.random_range(-3.14..3.14))
+    Rotation3::from_axis_angle(&axis, rng.random_range(-3.1..3.1))
 }
 
 const MACHINES: [&str; 3] = ["spherical", "offset", "seven"];

@@ -2,15 +2,12 @@
 
 #[path = "optimisation_checks/double.rs"]
 mod double;
-#[allow(dead_code)]
-#[path = "../src/measure/simplex.rs"]
-mod measure;
 #[path = "optimisation_checks/published.rs"]
 mod published;
 
 use balk_core::certificate::{Range, Unproved};
 use balk_core::simplex::{Outcome, Real, Simplex};
-use measure::{OwnedRow, System};
+use balk_tests::measure::simplex::{OwnedRow, System};
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 

@@ -1,7 +1,5 @@
 //! Published checks on rotations, and the target's boxes against sampled rotations.
 
-#[path = "../src/rotation.rs"]
-mod rotation;
 #[path = "rotation_checks/target_boxes.rs"]
 mod target_boxes;
 
@@ -11,7 +9,7 @@ use balk::read;
 use nalgebra::{Isometry3, Matrix2, Matrix3, Rotation3, UnitQuaternion, Vector2, Vector3, Vector4};
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
-use rotation::{
+use balk_tests::rotation::{
     hull_margin, hull_margin_spectral, hull_matrix, nearest, random, random_direction, shoemake,
 };
 use std::f64::consts::{FRAC_PI_2, PI};

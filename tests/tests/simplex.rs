@@ -1,11 +1,8 @@
 //! The simplex: answers, limits, warm starts, and a general-purpose solver on the same systems.
 
-#[path = "../src/measure/simplex.rs"]
-mod measure;
-
 use balk_core::certificate::{Range, Row, Term, Unproved};
 use balk_core::simplex::{Outcome, RowRejected, Simplex, TooManyUnknowns};
-use measure::{Family, OwnedRow, System};
+use balk_tests::measure::simplex::{self as measure, Family, OwnedRow, System};
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 
@@ -282,13 +279,6 @@ fn agrees_with_a_general_purpose_solver() {
             }
         }
     }
-}
-
-/// `cargo test --release --test simplex -- --ignored --nocapture`
-#[test]
-#[ignore = "prints a table of times"]
-fn table() {
-    measure::run(1000, 1);
 }
 
 /// What the documentation says of memory.

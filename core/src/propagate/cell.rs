@@ -191,10 +191,10 @@ pub fn turn(cell: &mut Cell, span: &mut JointSpan, sector: bool) -> Result<Chang
             }
         }
     }
-    if let (Some(to), Some(from)) = (Arc::of_box(wx, wy), Arc::of_box(vx, vy)) {
-        if let Some(arc) = Arc::between(to, from, span.arc) {
-            changed.span |= span.meet_arc(arc)?;
-        }
+    if let (Some(to), Some(from)) = (Arc::of_box(wx, wy), Arc::of_box(vx, vy))
+        && let Some(arc) = Arc::between(to, from, span.arc)
+    {
+        changed.span |= span.meet_arc(arc)?;
     }
     cell.before = [wx, wy, wz];
     cell.after = [vx, vy, vz];

@@ -42,19 +42,16 @@ impl Rules {
     pub const BASE: Rules = Rules(4);
     /// Equalities between two features seen from each other.
     pub const MUTUAL: Rules = Rules(8);
-    /// Inner products of directions seen from the base.
-    pub const PAIRS: Rules = Rules(16);
     /// Closing the loop by the angle to the wanted orientation, not only by the axes' boxes.
-    pub const SPREAD: Rules = Rules(32);
+    pub const SPREAD: Rules = Rules(16);
     /// Turning by direction and radius, not only by cosine and sine.
-    pub const SECTOR: Rules = Rules(64);
-
+    pub const SECTOR: Rules = Rules(32);
     /// First-order rows of the tip and of the turn to the wanted orientation.
-    pub const TIP_ROWS: Rules = Rules(128);
+    pub const TIP_ROWS: Rules = Rules(64);
     /// First-order rows of the joints' origins and axes.
-    pub const JOINT_ROWS: Rules = Rules(256);
+    pub const JOINT_ROWS: Rules = Rules(128);
     /// Cutting off the ends of spans that the rows show empty.
-    pub const SHAVING: Rules = Rules(512);
+    pub const SHAVING: Rules = Rules(256);
 
     /// Whether all of `other` are among these.
     pub fn has(self, other: Rules) -> bool {
@@ -119,9 +116,6 @@ impl<'a> Network<'a> {
             }
             if self.rules.has(Rules::MUTUAL) {
                 self.mutual()?;
-            }
-            if self.rules.has(Rules::PAIRS) {
-                self.pairs()?;
             }
             self.share(spans)?;
             if !any {
@@ -354,39 +348,6 @@ impl<'a> Network<'a> {
                         }
                     }
                     _ => {}
-                }
-            }
-        }
-        Ok(())
-    }
-
-    /// Two directions seen from the base: the angle between them is known from the joint whose
-    /// axis one of them is.
-    fn pairs(&mut self) -> Result<(), Empty> {
-        let stride = self.stride();
-        for p in 0..self.features.len() {
-            let Feature::Axis(a) = self.features[p] else {
-                continue;
-            };
-            for q in 0..self.features.len() {
-                // Each pair of axes once, every other direction with every axis.
-                let other = self.features[q];
-                if q == p || other.is_point() || matches!(other, Feature::Axis(_)) && q < p {
-                    continue;
-                }
-                let view = q * stride + a as usize;
-                let (first, second) = (p * stride, q * stride);
-                let (mut one, mut two) = (self.cells[first].after, self.cells[second].after);
-                let mut inner = self.cells[view].after[2];
-                let changed = link::meet_dot(&mut one, &mut two, &mut inner)?;
-                self.cells[first].after = one;
-                self.cells[second].after = two;
-                self.cells[view].after[2] = inner;
-                for (changed, at) in [(changed.0, first), (changed.1, second), (changed.2, view)] {
-                    if changed {
-                        self.cells[at].pending |= Cell::JOINT;
-                        self.cells[at + 1].pending |= Cell::LINK;
-                    }
                 }
             }
         }

@@ -13,12 +13,11 @@ const NODES: u64 = 300;
 const TRUTH: u64 = 3000;
 
 /// The rules in the order they are added.
-const STEPS: [(&str, Rules); 10] = [
+const STEPS: [(&str, Rules); 9] = [
     ("+ joint origins", Rules::ORIGINS),
     ("+ joint axes", Rules::AXES),
     ("+ base origin and axis", Rules::BASE),
     ("+ mutual equalities", Rules::MUTUAL),
-    ("+ pairs of directions", Rules::PAIRS),
     ("+ closing by the angle", Rules::SPREAD),
     ("+ sectors", Rules::SECTOR),
     ("+ rows of the tip", Rules::TIP_ROWS),

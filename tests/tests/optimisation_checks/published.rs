@@ -5,7 +5,7 @@ use balk_core::simplex::{Outcome, Real, Simplex};
 use serde::Deserialize;
 
 use crate::double::Double;
-use crate::measure::{OwnedRow, System};
+use balk_tests::measure::simplex::{OwnedRow, System};
 
 #[derive(Deserialize)]
 struct Matrix {

@@ -1,6 +1,6 @@
 //! The boxes a target starts propagation with, against sampled directions and rotations.
 
-use crate::rotation::{random, random_direction};
+use balk_tests::rotation::{random, random_direction};
 use crate::{seeded, target};
 use balk::model::{Cone, Orientation};
 use balk::pack::pack_target;
