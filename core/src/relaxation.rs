@@ -5,18 +5,21 @@ use crate::certificate::{Combination, Range, Refuted};
 use crate::fixed::{FRACTION_BITS, Interval, ONE, root_up};
 use crate::machine::Variable;
 use crate::propagate::cell::Vector;
-use crate::propagate::{Feature, Goal, MOST_FEATURES, MOST_JOINTS, Network, Rules, Spans};
+use crate::propagate::{Goal, MOST_JOINTS, Network, Rules, Spans};
 use crate::rows::{Expansion, Form, Linear};
 use crate::target::MOST_CONES;
 use crate::simplex::{Outcome, Simplex};
 use heapless::Vec;
 
-/// Most rows of one linear program.
-pub const MOST_ROWS: usize = 24;
+/// Most groups of rows: the tip's origin and axes, and as many turn limits.
+const MOST_GROUPS: usize = 1 + 2 * MOST_CONES;
+/// Most rows of one linear program: three for the tip's origin and each axis, and the turn limits.
+pub const MOST_ROWS: usize = 16;
 /// The simplex of a node.
 pub type NodeSimplex = Simplex<MOST_ROWS, MOST_JOINTS>;
 
-/// The program's rows come in groups that are added together: one per feature, and the turn limits.
+/// The program's rows come in groups that are added together: the tip's origin, each of its axes,
+/// and the turn limits.
 struct Rows<'n, 'a> {
     network: &'n Network<'a>,
     expansion: Expansion,
@@ -25,7 +28,7 @@ struct Rows<'n, 'a> {
 impl Rows<'_, '_> {
     /// Number of groups.
     fn groups(&self) -> usize {
-        self.network.features().len() + MOST_CONES
+        self.network.tip_features() + MOST_CONES
     }
 
     /// The linear forms of a feature's base coordinates.
@@ -39,14 +42,9 @@ impl Rows<'_, '_> {
 
     /// The rows of a group; fewer where there are none.
     fn group(&self, group: usize) -> Vec<Linear, 3> {
-        let features = self.network.features();
-        let joint = matches!(features.get(group), Some(Feature::Axis(_) | Feature::Origin(_)));
-        let family = if joint { Rules::JOINT_ROWS } else { Rules::TIP_ROWS };
-        if !self.network.rules().has(family) {
-            return Vec::new();
-        }
-        if group >= features.len() {
-            return self.turn_limit(group - features.len());
+        let features = self.network.tip_features();
+        if group >= features {
+            return self.turn_limit(group - features);
         }
         if self.network.moved_by(group) == 0 {
             return Vec::new();
@@ -172,7 +170,7 @@ pub fn relax(
         simplex,
         pivots,
     };
-    let mut added = [false; MOST_FEATURES + MOST_CONES];
+    let mut added = [false; MOST_GROUPS];
     program
         .simplex
         .start(program.boxes.iter().copied())

@@ -46,12 +46,8 @@ impl Rules {
     pub const SPREAD: Rules = Rules(16);
     /// Turning by direction and radius, not only by cosine and sine.
     pub const SECTOR: Rules = Rules(32);
-    /// First-order rows of the tip and of the turn to the wanted orientation.
-    pub const TIP_ROWS: Rules = Rules(64);
-    /// First-order rows of the joints' origins and axes.
-    pub const JOINT_ROWS: Rules = Rules(128);
     /// Cutting off the ends of spans that the rows show empty.
-    pub const SHAVING: Rules = Rules(256);
+    pub const SHAVING: Rules = Rules(64);
 
     /// Whether all of `other` are among these.
     pub fn has(self, other: Rules) -> bool {
@@ -414,6 +410,13 @@ impl<'a> Network<'a> {
     /// What the node allows of every joint.
     pub fn joint_spans(&self) -> &[JointSpan] {
         &self.joints
+    }
+
+    /// How many features, the first ones, belong to the tip: its origin and the axes the target
+    /// speaks of.
+    pub fn tip_features(&self) -> usize {
+        let axes = |feature: &&Feature| matches!(feature, Feature::TipAxis(_));
+        1 + self.features.iter().filter(axes).count()
     }
 
     /// How many joints move a feature.

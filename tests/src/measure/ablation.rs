@@ -12,23 +12,21 @@ const NODES: u64 = 300;
 /// Node budget that finds out the truth.
 const TRUTH: u64 = 3000;
 
-/// The rules in the order they are added.
-const STEPS: [(&str, Rules); 9] = [
+/// The rules of propagation in the order they are added.
+const STEPS: [(&str, Rules); 6] = [
     ("+ joint origins", Rules::ORIGINS),
     ("+ joint axes", Rules::AXES),
     ("+ base origin and axis", Rules::BASE),
     ("+ mutual equalities", Rules::MUTUAL),
     ("+ closing by the angle", Rules::SPREAD),
     ("+ sectors", Rules::SECTOR),
-    ("+ rows of the tip", Rules::TIP_ROWS),
-    ("+ rows of joints", Rules::JOINT_ROWS),
-    ("+ shaving", Rules::SHAVING),
 ];
 
 /// One line of the table: a name and what runs.
 fn variants() -> Vec<(String, Options)> {
     let least = Options {
         rules: Rules(0),
+        pivots: 0,
         candidates: 1,
         ..Options::default()
     };
@@ -44,6 +42,17 @@ fn variants() -> Vec<(String, Options)> {
             },
         ));
     }
+    let rows = Options {
+        rules: Rules(rules),
+        pivots: Options::default().pivots,
+        ..least
+    };
+    variants.push(("+ first-order rows".to_string(), rows));
+    let shaving = Options {
+        rules: Rules(rules | Rules::SHAVING.0),
+        ..rows
+    };
+    variants.push(("+ shaving".to_string(), shaving));
     for candidates in [2, 3] {
         variants.push((
             format!("+ best of {candidates} cuts"),
@@ -61,6 +70,24 @@ fn variants() -> Vec<(String, Options)> {
                 ..Options::default()
             },
         ));
+    }
+    for (name, options) in [
+        (
+            "all without first-order rows",
+            Options {
+                pivots: 0,
+                ..Options::default()
+            },
+        ),
+        (
+            "all without shaving",
+            Options {
+                rules: Rules(Rules::ALL.0 & !Rules::SHAVING.0),
+                ..Options::default()
+            },
+        ),
+    ] {
+        variants.push((name.to_string(), options));
     }
     variants
 }
