@@ -2,12 +2,14 @@
 
 pub mod families;
 pub mod random;
+pub mod truth;
 pub mod rotation;
 
 /// Measurements: each prints a table or is run by a test.
 pub mod measure {
     pub mod ablation;
     pub mod base_frame;
+    pub mod containment;
     pub mod families;
     pub mod kernel;
     pub mod lifted;

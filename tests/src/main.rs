@@ -25,6 +25,18 @@ enum Command {
         #[arg(long, default_value_t = 11)]
         seed: u64,
     },
+    /// Every box, span and row of the node test beside the truth of planted postures
+    Containment {
+        /// Node tests, each with all its boxes
+        #[arg(long, default_value_t = 1_000_000)]
+        checks: u64,
+        /// Seed of machines, postures and targets
+        #[arg(long, default_value_t = 5)]
+        seed: u64,
+        /// Repeat only this machine of the run
+        #[arg(long)]
+        machine: Option<u64>,
+    },
     /// Complete decision and screening on the three arms, beside common checks
     Families {
         /// Kinds of target
@@ -93,6 +105,11 @@ fn main() {
             targets,
             seed,
         } => measure::ablation::run(&kinds, targets, seed),
+        Command::Containment {
+            checks,
+            seed,
+            machine,
+        } => measure::containment::print(checks, seed, machine),
         Command::Families {
             kinds,
             targets,

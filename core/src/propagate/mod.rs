@@ -11,7 +11,7 @@ pub mod link;
 mod branch;
 mod start;
 
-use crate::fixed::{Arc, Empty, Interval};
+use crate::fixed::{Arc, Empty, Interval, Product};
 pub use crate::machine::Chain;
 use crate::machine::{Joint, Motion, Placement};
 use cell::{Cell, JointSpan, Vector};
@@ -435,6 +435,12 @@ impl<'a> Network<'a> {
     pub fn view(&self, feature: usize, joint: usize) -> (Vector, Vector) {
         let cell = &self.cells[feature * self.stride() + joint];
         (cell.before, cell.after)
+    }
+
+    /// The squared lengths of a view, for tests: before and after motion.
+    pub fn squares(&self, feature: usize, joint: usize) -> (Product, Product) {
+        let cell = &self.cells[feature * self.stride() + joint];
+        (cell.square_before, cell.square_after)
     }
 
     /// The features in use.
