@@ -7,8 +7,8 @@ use crate::machine::Variable;
 use crate::propagate::cell::Vector;
 use crate::propagate::{Goal, MOST_JOINTS, Network, Rules, Spans};
 use crate::rows::{Expansion, Form, Linear};
-use crate::target::MOST_CONES;
 use crate::simplex::{Outcome, Simplex};
+use crate::target::MOST_CONES;
 use heapless::Vec;
 
 /// Most groups of rows: the tip's origin and axes, and as many turn limits.
@@ -100,7 +100,10 @@ impl Rows<'_, '_> {
         let mut turn = [0i64; 3];
         let middle = |i: Interval| (i.lo as i64 + i.hi as i64) / 2;
         for (forms, wanted) in forms.iter().zip(wanted) {
-            let (a, d) = (wanted.map(middle), [0, 1, 2].map(|k| forms[k].middle().clamp(-(ONE as i64), ONE as i64)));
+            let (a, d) = (
+                wanted.map(middle),
+                [0, 1, 2].map(|k| forms[k].middle().clamp(-(ONE as i64), ONE as i64)),
+            );
             for (k, turn) in turn.iter_mut().enumerate() {
                 let (i, j) = ((k + 1) % 3, (k + 2) % 3);
                 *turn += (a[i] * d[j] - a[j] * d[i]) >> FRACTION_BITS;
@@ -109,7 +112,8 @@ impl Rows<'_, '_> {
         let size = turn.iter().map(|t| (t >> 6) * (t >> 6)).sum::<i64>();
         let size = root_up(size).max(1);
         // Not longer than one: rounding towards zero.
-        let along = turn.map(|t| (((t >> 6) << FRACTION_BITS) / size).clamp(-(ONE as i64), ONE as i64));
+        let along =
+            turn.map(|t| (((t >> 6) << FRACTION_BITS) / size).clamp(-(ONE as i64), ONE as i64));
         let mut sum = Form::ZERO;
         for (forms, wanted) in forms.iter().zip(wanted) {
             let a = wanted.map(middle);
@@ -246,9 +250,15 @@ impl Program<'_> {
             return None;
         }
         let (cut, rest) = if upper {
-            (Range::between(hi - slice, hi), Range::between(lo, hi - slice))
+            (
+                Range::between(hi - slice, hi),
+                Range::between(lo, hi - slice),
+            )
         } else {
-            (Range::between(lo, lo + slice), Range::between(lo + slice, hi))
+            (
+                Range::between(lo, lo + slice),
+                Range::between(lo + slice, hi),
+            )
         };
         self.boxes[v] = cut;
         self.simplex.set_box(v, cut);

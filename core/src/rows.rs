@@ -118,7 +118,10 @@ impl Expansion {
                 }
                 Motion::Slide => {
                     let middle = half_way(span.length);
-                    Range::between(span.length.lo as i64 - middle, span.length.hi as i64 - middle)
+                    Range::between(
+                        span.length.lo as i64 - middle,
+                        span.length.hi as i64 - middle,
+                    )
                 }
             };
             let _ = expansion.boxes.push(range);
@@ -144,8 +147,8 @@ impl Expansion {
                     versine = ONE as i64 - about.cosine().lo as i64;
                 }
                 Motion::Slide => {
-                    let length = half_way(variable.length) * joint.multiple as i64
-                        + half_way(joint.shift);
+                    let length =
+                        half_way(variable.length) * joint.multiple as i64 + half_way(joint.shift);
                     let step = apply(&at, [0, 0, length as i32]);
                     origin = [0, 1, 2].map(|k| origin[k] + step[k]);
                     noise += joint.shift.width();
@@ -179,7 +182,11 @@ impl Expansion {
         let spread: i64 = fixed.iter().map(|v| v.width()).max().unwrap_or(0);
         let noise = ROUNDING + last.noise + 2 * spread;
         let mut forms = [0, 1, 2].map(|k| {
-            let origin = if point { self.origins[joints - 1][k] } else { 0 };
+            let origin = if point {
+                self.origins[joints - 1][k]
+            } else {
+                0
+            };
             let value = at_middle[k] + origin;
             Form {
                 coefficients: [0; MOST_JOINTS],
@@ -202,7 +209,9 @@ impl Expansion {
             let (rx, ry) = ((x.width() + 1) / 2 + 1, (y.width() + 1) / 2 + 1);
             let own = self.boxes[variable];
             let bent = joint.bend(
-                own.lower.zip(own.upper).map_or(ONE as i64, |(lo, hi)| hi.max(-lo)),
+                own.lower
+                    .zip(own.upper)
+                    .map_or(ONE as i64, |(lo, hi)| hi.max(-lo)),
             );
             for (form, &[l0, l1, _]) in forms.iter_mut().zip(&middle.rotation) {
                 // L J a = -l0 a_y + l1 a_x, L P a = l0 a_x + l1 a_y.
@@ -212,9 +221,7 @@ impl Expansion {
                     >> FRACTION_BITS)
                     + 2;
                 // What the coefficient may be off, times the sine.
-                let error = ((left * middle.sine) >> FRACTION_BITS)
-                    + scaled(along.abs(), bent)
-                    + 2;
+                let error = ((left * middle.sine) >> FRACTION_BITS) + scaled(along.abs(), bent) + 2;
                 // Minus one minus cosine, which may be up to two, times what lies across.
                 let across = x.scale(l0).plus(y.scale(l1)).round(0);
                 let half = Interval {
@@ -306,7 +313,11 @@ impl Joint {
         if self.is_plain() {
             return own;
         }
-        let step = if self.multiple < 0 { own.conjugate() } else { own };
+        let step = if self.multiple < 0 {
+            own.conjugate()
+        } else {
+            own
+        };
         (0..self.multiple.unsigned_abs())
             .fold(self.turn.middle(), |sum, _| sum.turned(step))
             .normalised()
@@ -370,7 +381,10 @@ impl JointSpan {
             let middle = self.arc.middle();
             let end = |sine: i64| {
                 let cosine = root_down(ONE_SQUARED - sine * sine);
-                middle.turned(Direction { x: cosine as i32, y: sine as i32 })
+                middle.turned(Direction {
+                    x: cosine as i32,
+                    y: sine as i32,
+                })
             };
             let kept = Arc::new(end(lo), end(hi)).normalised();
             let _ = self.meet_arc(kept);

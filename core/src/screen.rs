@@ -65,7 +65,10 @@ pub type Workspace7 = Workspace<{ cells_for(7) }, 16>;
 pub type Workspace8 = Workspace<{ cells_for(8) }, 16>;
 
 /// A part of the joint space waiting to be shown empty.
-#[allow(clippy::large_enum_variant, reason = "there is no heap to put the spans on")]
+#[allow(
+    clippy::large_enum_variant,
+    reason = "there is no heap to put the spans on"
+)]
 enum Part {
     /// Already shown, when it was cut off.
     Closed(Empty),

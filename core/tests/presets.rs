@@ -6,10 +6,30 @@ use balk_core::screen::{Workspace4, Workspace6, Workspace7, Workspace8};
 #[test]
 fn presets_take_no_more_than_stated() {
     let sizes = [
-        (size_of::<Workspace4>(), 13_576, size_of::<Machine<4>>(), 800),
-        (size_of::<Workspace6>(), 18_504, size_of::<Machine<6>>(), 1_136),
-        (size_of::<Workspace7>(), 21_496, size_of::<Machine<7>>(), 1_304),
-        (size_of::<Workspace8>(), 24_840, size_of::<Machine<8>>(), 1_472),
+        (
+            size_of::<Workspace4>(),
+            13_576,
+            size_of::<Machine<4>>(),
+            800,
+        ),
+        (
+            size_of::<Workspace6>(),
+            18_504,
+            size_of::<Machine<6>>(),
+            1_136,
+        ),
+        (
+            size_of::<Workspace7>(),
+            21_496,
+            size_of::<Machine<7>>(),
+            1_304,
+        ),
+        (
+            size_of::<Workspace8>(),
+            24_840,
+            size_of::<Machine<8>>(),
+            1_472,
+        ),
     ];
     for (workspace, stated, machine, stated_machine) in sizes {
         assert!(workspace <= stated, "{workspace} bytes");

@@ -3,7 +3,7 @@
 pub mod cli;
 pub mod kinematics;
 pub mod model;
-pub mod read;
 pub mod pack;
 pub mod posture;
+pub mod read;
 pub mod search;

@@ -187,7 +187,10 @@ impl Solver {
             for outcome in outcomes {
                 match outcome {
                     Outcome::Closed(step) => tree.update(format!("{step:?}")),
-                    Outcome::Cut { variable, open: parts } => {
+                    Outcome::Cut {
+                        variable,
+                        open: parts,
+                    } => {
                         tree.update(format!("{variable}/{}", parts.len()));
                         open.extend(parts);
                     }

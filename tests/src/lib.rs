@@ -2,8 +2,8 @@
 
 pub mod families;
 pub mod random;
-pub mod truth;
 pub mod rotation;
+pub mod truth;
 
 /// Measurements: each prints a table or is run by a test.
 pub mod measure {

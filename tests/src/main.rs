@@ -5,7 +5,11 @@ use balk_tests::measure;
 use clap::{Parser, Subcommand};
 
 #[derive(Parser)]
-#[command(name = "measure", version, about = "Measure balk: every command prints a table")]
+#[command(
+    name = "measure",
+    version,
+    about = "Measure balk: every command prints a table"
+)]
 struct Arguments {
     #[command(subcommand)]
     command: Command,

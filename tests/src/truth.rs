@@ -71,7 +71,9 @@ impl Frames {
             joint.follows = None;
         }
         let bodies = joint_frames(&still, &vec![0.0; still.joints.len()]);
-        let tip = written.tips[0].parent.map_or_else(Isometry3::identity, |j| bodies[j])
+        let tip = written.tips[0]
+            .parent
+            .map_or_else(Isometry3::identity, |j| bodies[j])
             * written.tips[0].placement;
 
         // From the tip back: the foot of the next origin.
@@ -161,8 +163,12 @@ impl Truth {
                         * UnitQuaternion::from_axis_angle(&Vector3::z_axis(), heading),
                 )
             };
-            truth.before.push(place(parent * joint.placement, constants.before));
-            truth.after.push(place(bodies[constants.joint], constants.after));
+            truth
+                .before
+                .push(place(parent * joint.placement, constants.before));
+            truth
+                .after
+                .push(place(bodies[constants.joint], constants.after));
             truth.values.push(match joint.kind {
                 Kind::Prismatic => values[constants.joint] / scale,
                 _ => values[constants.joint] + constants.after - constants.before,

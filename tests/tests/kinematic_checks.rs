@@ -4,7 +4,6 @@
 mod closed_form;
 
 use balk::kinematics::{meets, tip_pose};
-use balk_tests::rotation;
 use balk::model::{Machine, Orientation, Target};
 use balk::pack::pack_target;
 use balk::posture::Linkage;
@@ -14,6 +13,7 @@ use balk_core::fixed::{Arc, Direction, ONE};
 use balk_core::propagate::cell::{Cell, JointSpan};
 use balk_core::propagate::{Goal, Network};
 use balk_core::screen::{cells_for, limits};
+use balk_tests::rotation;
 use closed_form::{horizontal_reaches, textbook_postures, textbook_reaches};
 use nalgebra::{Isometry3, Matrix3, Rotation3, Vector3};
 use rand::{Rng, SeedableRng};

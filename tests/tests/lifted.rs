@@ -11,7 +11,9 @@ use nalgebra::{Matrix3, Rotation3, Unit, Vector3};
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 
-use balk_tests::measure::lifted::envelope::{Plane, chord, product, secant, sphere_tangent, tangent};
+use balk_tests::measure::lifted::envelope::{
+    Plane, chord, product, secant, sphere_tangent, tangent,
+};
 use balk_tests::measure::lifted::form::Form;
 use balk_tests::measure::lifted::hull;
 use balk_tests::measure::lifted::program::Families;

@@ -6,12 +6,12 @@ mod target_boxes;
 use balk::kinematics::{angle_between, turn_between, turn_excess};
 use balk::model::{Cone, Machine, Orientation, Target};
 use balk::read;
-use nalgebra::{Isometry3, Matrix2, Matrix3, Rotation3, UnitQuaternion, Vector2, Vector3, Vector4};
-use rand::{Rng, SeedableRng};
-use rand_chacha::ChaCha8Rng;
 use balk_tests::rotation::{
     hull_margin, hull_margin_spectral, hull_matrix, nearest, random, random_direction, shoemake,
 };
+use nalgebra::{Isometry3, Matrix2, Matrix3, Rotation3, UnitQuaternion, Vector2, Vector3, Vector4};
+use rand::{Rng, SeedableRng};
+use rand_chacha::ChaCha8Rng;
 use std::f64::consts::{FRAC_PI_2, PI};
 
 fn seeded(seed: u64) -> ChaCha8Rng {

@@ -152,8 +152,7 @@ impl Arc {
     #[inline]
     fn component(self, most: Direction, least: Direction, of: fn(Direction) -> i32) -> Interval {
         let (a, b) = (of(self.lo) as i64, of(self.hi) as i64);
-        let mut bounds =
-            Interval::clamped(a.min(b) - DIRECTION_SLACK, a.max(b) + DIRECTION_SLACK);
+        let mut bounds = Interval::clamped(a.min(b) - DIRECTION_SLACK, a.max(b) + DIRECTION_SLACK);
         if self.contains(most) {
             bounds.hi = ONE;
         }
@@ -175,7 +174,8 @@ impl Arc {
         );
         let across = self.lo.cross(self.hi);
         // Near half a turn the sum has no direction; a quarter turn from the start has.
-        if sum.0.abs().max(sum.1.abs()) < (ONE >> 4) as i64 && (across != 0 || self.lo.dot(self.hi) < 0)
+        if sum.0.abs().max(sum.1.abs()) < (ONE >> 4) as i64
+            && (across != 0 || self.lo.dot(self.hi) < 0)
         {
             return self.lo.quarter().normalised();
         }
@@ -192,10 +192,7 @@ impl Arc {
     /// The two halves either side of [`Arc::middle`]; together they are the arc.
     pub fn halves(self) -> (Arc, Arc) {
         let middle = self.middle();
-        (
-            Arc::new(self.lo, middle),
-            Arc::new(middle, self.hi),
-        )
+        (Arc::new(self.lo, middle), Arc::new(middle, self.hi))
     }
 
     /// The directions of a box of vectors: `None` when the box touches the origin.

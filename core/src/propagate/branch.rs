@@ -6,7 +6,10 @@ use crate::fixed::{Direction, Empty, ONE};
 use crate::machine::Motion;
 
 /// What became of a node.
-#[allow(clippy::large_enum_variant, reason = "there is no heap to put the parts on")]
+#[allow(
+    clippy::large_enum_variant,
+    reason = "there is no heap to put the parts on"
+)]
 pub enum Branch {
     /// One variable was cut; each part is propagated, or proved empty.
     Cut {

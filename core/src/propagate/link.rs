@@ -103,7 +103,11 @@ pub fn link(
         .square_before
         .meet(square.plus(previous.square_after).minus(along_previous))?;
     let difference = previous.square_after.minus(next.square_before);
-    forward |= meet_along(&mut next.before, &placement.back, difference.minus(square).halve())?;
+    forward |= meet_along(
+        &mut next.before,
+        &placement.back,
+        difference.minus(square).halve(),
+    )?;
     back |= meet_along(
         &mut previous.after,
         &placement.origin,
@@ -294,9 +298,15 @@ pub fn meet_least<const N: usize>(
             };
             if let Some(value) = own_least.over_interval(*fixed) {
                 let bound = if fixed.lo > 0 {
-                    Interval { lo: value.lo, ..Interval::UNIT }
+                    Interval {
+                        lo: value.lo,
+                        ..Interval::UNIT
+                    }
                 } else {
-                    Interval { hi: value.hi, ..Interval::UNIT }
+                    Interval {
+                        hi: value.hi,
+                        ..Interval::UNIT
+                    }
                 };
                 changed |= own.meet(bound)?;
             }
@@ -305,7 +315,10 @@ pub fn meet_least<const N: usize>(
     if most < least.lo {
         // The sum cannot be reached: the meets above have emptied a component unless every factor
         // is too small to divide by.
-        let mut none = Product { lo: least.lo, hi: least.hi.max(least.lo) };
+        let mut none = Product {
+            lo: least.lo,
+            hi: least.hi.max(least.lo),
+        };
         none.meet(Product { lo: most, hi: most })?;
     }
     Ok(changed)
@@ -325,7 +338,8 @@ pub fn meet_dot(
     let wanted = inner.widen();
     let mut changed = (false, false, inner_changed);
     // Nothing to gain unless the product is known better than the vectors tell.
-    if wanted.lo - sum.lo <= (sum.hi - sum.lo) >> 4 && sum.hi - wanted.hi <= (sum.hi - sum.lo) >> 4 {
+    if wanted.lo - sum.lo <= (sum.hi - sum.lo) >> 4 && sum.hi - wanted.hi <= (sum.hi - sum.lo) >> 4
+    {
         return Ok(changed);
     }
     for k in 0..3 {

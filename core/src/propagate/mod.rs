@@ -6,17 +6,17 @@
 //! shrink boxes by integer arithmetic rounded outward, so a box that becomes empty proves that no
 //! posture within the spans meets the target.
 
+mod branch;
 pub mod cell;
 pub mod link;
-mod branch;
 mod start;
 
 use crate::fixed::{Arc, Empty, Interval, Product};
 pub use crate::machine::Chain;
 use crate::machine::{Joint, Motion, Placement};
+pub use branch::Branch;
 use cell::{Cell, JointSpan, Vector};
 use heapless::Vec;
-pub use branch::Branch;
 pub use start::Goal;
 
 /// Most joints of any machine.

@@ -240,7 +240,8 @@ impl<'a> Network<'a> {
             // A shorter offset than a thousandth of a thousandth of the reach tells nothing.
             let offset = joint.placement.square.hi > ONE_SQUARED >> 40;
             if rules.has(if i == 0 { Rules::BASE } else { Rules::ORIGINS })
-                && (if i == 0 { closed } else { offset }) {
+                && (if i == 0 { closed } else { offset })
+            {
                 push(Feature::Origin(number));
             }
         }
@@ -249,7 +250,8 @@ impl<'a> Network<'a> {
             let parallel = joint.placement.rotation[2][2].unsigned_abs() == ONE as u32;
             if rules.has(if i == 0 { Rules::BASE } else { Rules::AXES })
                 && closed
-                && (!parallel || i == 0) {
+                && (!parallel || i == 0)
+            {
                 push(Feature::Axis(number));
             }
         }

@@ -108,9 +108,7 @@ impl From<Command> for Job {
             },
             Command::Screen { inputs, splits } => Job {
                 inputs,
-                task: Task::Screen {
-                    splits,
-                },
+                task: Task::Screen { splits },
             },
         }
     }

@@ -14,9 +14,9 @@ use crate::read::{Defect, printable};
 use crate::search::{Decision, Verdict};
 
 use super::answer::{Answer, Outcome};
-use crate::search::Screening;
 use super::arguments::CAUTION;
 use super::tally::{Tally, Word};
+use crate::search::Screening;
 
 /// Version of the JSON rows; rises when a field changes its meaning.
 const SCHEMA: u32 = 1;

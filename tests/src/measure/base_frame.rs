@@ -91,7 +91,9 @@ impl Box1 {
 type Vector = [Box1; 3];
 
 fn dot(a: &Vector, b: &Vector) -> Box1 {
-    a[0].times(b[0]).plus(a[1].times(b[1])).plus(a[2].times(b[2]))
+    a[0].times(b[0])
+        .plus(a[1].times(b[1]))
+        .plus(a[2].times(b[2]))
 }
 
 /// Unit length of three components.
@@ -99,10 +101,7 @@ fn unit(v: [&mut Box1; 3]) -> Result<(), Empty> {
     let squares = [v[0].square(), v[1].square(), v[2].square()];
     let sum = squares.iter().fold(Box1::new(0.0, 0.0), |s, q| s.plus(*q));
     for (own, square) in v.into_iter().zip(squares) {
-        own.meet_square(
-            1.0 - (sum.hi - square.hi),
-            1.0 - (sum.lo - square.lo),
-        )?;
+        own.meet_square(1.0 - (sum.hi - square.hi), 1.0 - (sum.lo - square.lo))?;
     }
     Ok(())
 }
@@ -219,9 +218,8 @@ impl BaseFrame {
         let count = self.placements.len();
         let mut frames = vec![Frame::unknown(self.reach); count + 2];
         frames[0] = Frame {
-            columns: [0, 1, 2].map(|j| {
-                [0, 1, 2].map(|k| Box1::about(if j == k { 1.0 } else { 0.0 }, 0.0))
-            }),
+            columns: [0, 1, 2]
+                .map(|j| [0, 1, 2].map(|k| Box1::about(if j == k { 1.0 } else { 0.0 }, 0.0))),
             origin: [Box1::about(0.0, 0.0); 3],
         };
         if let Orientation::Near { rotation, within } = &target.orientation {
@@ -349,6 +347,10 @@ fn range(lo: f64, hi: f64) -> Box1 {
         } else {
             lo.cos().min(hi.cos())
         },
-        if holds(0.0) { 1.0 } else { lo.cos().max(hi.cos()) },
+        if holds(0.0) {
+            1.0
+        } else {
+            lo.cos().max(hi.cos())
+        },
     )
 }

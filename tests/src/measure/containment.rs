@@ -36,8 +36,7 @@ const POSTURES: u32 = 5;
 /// Boxes of spans cut around the posture, halvings, and cuts chosen by the core.
 const STEPS: [u32; 3] = [3, 4, 2];
 /// Checks on each machine: those and the full limits.
-pub const CHECKS_PER_MACHINE: u64 =
-    (POSTURES * (1 + STEPS[0] + STEPS[1] + STEPS[2])) as u64;
+pub const CHECKS_PER_MACHINE: u64 = (POSTURES * (1 + STEPS[0] + STEPS[1] + STEPS[2])) as u64;
 /// Pivots of the simplex at each node.
 const PIVOTS: u32 = 200;
 /// One machine in so many is an arm of `machines/`.
@@ -169,7 +168,8 @@ impl Tally {
         if !(margin >= -ALLOWANCE) {
             margins.violations += 1;
             if self.failures.len() < 4 {
-                self.failures.push(format!("{}: {margin:.4} units: {}", kind.name(), what()));
+                self.failures
+                    .push(format!("{}: {margin:.4} units: {}", kind.name(), what()));
             }
         }
     }
@@ -283,7 +283,9 @@ impl Case<'_> {
 
     fn open(&self, open: bool, by: &str, tally: &mut Tally) {
         let margin = if open { 0.0 } else { f64::NEG_INFINITY };
-        tally.note(Kinds::Open, margin, true, || format!("{}: empty by {by}", self.name));
+        tally.note(Kinds::Open, margin, true, || {
+            format!("{}: empty by {by}", self.name)
+        });
     }
 
     /// Every feature seen from everywhere.
@@ -427,7 +429,10 @@ impl Case<'_> {
         let (lower, upper) = spans[v].halves(self.motion(v));
         let (low, high) = (self.margin(&lower, v), self.margin(&upper, v));
         tally.note(Kinds::Span, low.max(high), true, || {
-            format!("{}: variable {v} between {lower:?} and {upper:?}", self.name)
+            format!(
+                "{}: variable {v} between {lower:?} and {upper:?}",
+                self.name
+            )
         });
         part[v] = if low > high { lower } else { upper };
         part
@@ -474,7 +479,9 @@ fn special(random: &mut impl Rng, sample: &Sample) -> Option<Vec<f64>> {
         let [lo, hi] = range(&sample.written, i);
         let exact = [0.0, FRAC_PI_2, -FRAC_PI_2, PI, -PI][random.random_range(0..5)];
         let near = match random.random_range(0..3) {
-            0 => exact + random.random_range(-1.0..1.0) * f64::exp2(random.random_range(-32.0..-4.0)),
+            0 => {
+                exact + random.random_range(-1.0..1.0) * f64::exp2(random.random_range(-32.0..-4.0))
+            }
             _ => exact,
         };
         if lo <= near && near <= hi {

@@ -99,9 +99,13 @@ pub fn run(options: &Options) {
         for family in Family::all() {
             arm(&family, kind, options, &mut catches, &mut baselines);
         }
-        println!("\n| arm | splits | refused of the unreachable | of the reachable | ms mean |\n|---|---|---|---|---|");
+        println!(
+            "\n| arm | splits | refused of the unreachable | of the reachable | ms mean |\n|---|---|---|---|---|"
+        );
         catches.iter().for_each(|row| println!("{row}"));
-        println!("\n| arm | check | false refusals | caught | ms mean | time / ours |\n|---|---|---|---|---|---|");
+        println!(
+            "\n| arm | check | false refusals | caught | ms mean | time / ours |\n|---|---|---|---|---|---|"
+        );
         baselines.iter().for_each(|row| println!("{row}"));
     }
 }
@@ -151,8 +155,7 @@ fn arm(
             assert!(!(reachable && refused), "false refusal of {target:?}");
         }
         let clock = Instant::now();
-        let outside = (target.xyz - family.centre).norm()
-            > family.reach + target.xyz_within.norm();
+        let outside = (target.xyz - family.centre).norm() > family.reach + target.xyz_within.norm();
         ball.add(reachable, outside, clock.elapsed().as_secs_f64());
         if number < options.baseline {
             for (square, starts) in squares.iter_mut().zip(STARTS) {
@@ -163,7 +166,10 @@ fn arm(
         }
     }
     bar.finish_and_clear();
-    for (sample, answer) in samples.iter_mut().zip(["reachable", "unreachable", "undecided"]) {
+    for (sample, answer) in samples
+        .iter_mut()
+        .zip(["reachable", "unreachable", "undecided"])
+    {
         let share = percent(sample.nodes.len(), targets.len());
         sample.milliseconds.sort_by(f64::total_cmp);
         sample.nodes.sort_by(f64::total_cmp);

@@ -1,11 +1,11 @@
 //! The boxes a target starts propagation with, against sampled directions and rotations.
 
-use balk_tests::rotation::{random, random_direction};
 use crate::{seeded, target};
 use balk::model::{Cone, Orientation};
 use balk::pack::pack_target;
 use balk_core::fixed::{Interval, ONE, ONE_SQUARED};
 use balk_core::propagate::Goal;
+use balk_tests::rotation::{random, random_direction};
 use nalgebra::{Matrix3, Rotation3, Unit, UnitQuaternion, Vector3};
 use rand::Rng;
 use rand_chacha::ChaCha8Rng;
