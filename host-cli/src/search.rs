@@ -192,6 +192,8 @@ impl Solver {
                         open: parts,
                     } => {
                         tree.update(format!("{variable}/{}", parts.len()));
+                        // Parts closed by the cut itself were looked at too.
+                        count += 2 - parts.len() as u64;
                         open.extend(parts);
                     }
                     Outcome::Found(joints) => {
