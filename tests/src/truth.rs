@@ -190,6 +190,11 @@ impl Truth {
         self.values[joint - 1]
     }
 
+    /// The tip's orientation in the base frame.
+    pub fn tip_rotation(&self) -> UnitQuaternion<f64> {
+        self.tip.rotation
+    }
+
     /// A feature in the base frame. `axes` are the tip axes the target speaks of, in the tip frame.
     pub fn in_base(&self, feature: Feature, axes: &[Vector3<f64>]) -> Vector3<f64> {
         match feature {

@@ -216,7 +216,7 @@ impl Goal {
 
 impl<'a> Network<'a> {
     /// Chooses the features of a chain under a target. `cells` must hold
-    /// [`cells_for`](crate::screen::cells_for) cells; with fewer, features are left out.
+    /// [`cells_for`](crate::screen::cells_for) cells, as `screen` sees to.
     pub fn new(
         chain: Chain<'a>,
         goal: &'a Goal,

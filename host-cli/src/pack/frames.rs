@@ -27,7 +27,9 @@ impl Stretch {
             placement: self.placement * placement,
             xyz: self.xyz
                 + self.angle * placement.translation.vector.norm()
-                + tolerance.xyz * 3f64.sqrt(),
+                + tolerance.xyz * 3f64.sqrt()
+                // Rounding of double precision, for long links that fold back.
+                + 4.0 * f64::EPSILON * placement.translation.vector.norm(),
             angle: self.angle + tolerance.angle,
         }
     }

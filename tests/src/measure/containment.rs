@@ -148,7 +148,12 @@ pub fn machine(seed: u64, number: u64, arms: &[Arm], lie: Lie) -> Tally {
 /// All checks of one posture and target.
 fn checks(random: &mut impl Rng, case: &Case, wanted: &Target, tally: &mut Tally) {
     let chain = case.pack.machine.chain();
-    let goal = Goal::new(&pack_target(wanted, case.pack.scale));
+    let packed = pack_target(wanted, case.pack.scale);
+    let goal = if random.random() {
+        Goal::new(&packed)
+    } else {
+        Goal::new(&case.tight(random, &packed))
+    };
     // Some with a random choice of rules, whose boxes others would tighten.
     let rules = if random.random_bool(0.75) {
         Rules::ALL

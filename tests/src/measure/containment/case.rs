@@ -3,13 +3,14 @@
 use super::tally::{Kinds, Tally, UNITS};
 use crate::truth::Truth;
 use balk::pack::Pack;
-use balk_core::fixed::{Arc, Direction, Interval};
+use balk_core::fixed::{Arc, Direction, Interval, ONE};
 use balk_core::machine::Motion;
 use balk_core::propagate::cell::{JointSpan, Vector};
-use balk_core::propagate::{Branch, Network, Spans};
+use balk_core::propagate::{Branch, Feature, Network, Spans};
 use balk_core::relaxation::{NodeSimplex, relax};
 use balk_core::rows::{Expansion, Form};
-use nalgebra::Vector3;
+use balk_core::target::{Orientation, Target};
+use nalgebra::{Quaternion, Unit, UnitQuaternion, Vector3};
 use rand::Rng;
 use std::f64::consts::TAU;
 
@@ -222,26 +223,22 @@ impl Case<'_> {
 
     /// A box of spans within limits that holds the posture: some as given, some cut around it.
     pub fn around(&self, random: &mut impl Rng, whole: &Spans) -> Spans {
-        // From two units to half a turn.
-        let finest = random.random_range(-29.0..1.5);
+        // From less than a unit to half a turn.
+        let finest = random.random_range(-33.0..1.5);
         let mut size = || f64::exp2(random.random_range(finest..1.65f64));
         let mut spans = whole.clone();
         for (v, span) in spans.iter_mut().enumerate() {
             let (low, high) = (size(), size());
-            if low > 1.5 {
-                continue;
-            }
             let truth = self.variables[v];
             match self.motion(v) {
-                Motion::Turn if low + high < TAU - 0.01 => {
-                    let near = Arc::new(direction(truth - low), direction(truth + high));
+                Motion::Turn if low < 1.5 && low + high < TAU - 0.01 => {
+                    let near = Arc::new(beside(truth, -low), beside(truth, high));
                     let mut arc = span.arc;
                     if arc.meet(near).is_ok() {
                         *span = JointSpan::of_arc(arc);
                     }
                 }
-                Motion::Turn => {}
-                Motion::Slide => {
+                Motion::Slide if low < 1.5 => {
                     let (low, high) = ((truth - low) * UNITS, (truth + high) * UNITS);
                     let near = Interval::clamped(low.floor() as i64, high.ceil() as i64);
                     let mut length = span.length;
@@ -249,6 +246,7 @@ impl Case<'_> {
                         *span = JointSpan::of_length(length);
                     }
                 }
+                _ => {}
             }
         }
         spans
@@ -296,10 +294,84 @@ impl Case<'_> {
     }
 }
 
-fn direction(angle: f64) -> Direction {
-    let (y, x) = angle.sin_cos();
-    Direction {
-        x: (x * UNITS).round() as i32,
-        y: (y * UNITS).round() as i32,
+/// The direction an angle away, moved on by single units until rounding has not brought it past.
+fn beside(angle: f64, away: f64) -> Direction {
+    let mut away = away;
+    loop {
+        let (y, x) = (angle + away).sin_cos();
+        let end = Direction {
+            x: (x * UNITS).round() as i32,
+            y: (y * UNITS).round() as i32,
+        };
+        let (sine, cosine) = angle.sin_cos();
+        let past = (cosine * f64::from(end.y) - sine * f64::from(end.x)) * away.signum();
+        if away.abs() > 1e-6 || past >= 0.0 {
+            return end;
+        }
+        away += away.signum() / UNITS;
+    }
+}
+
+impl Case<'_> {
+    /// The same target shrunk until the posture lies at its edge: no more than the rounding that the
+    /// core's contract asks for is left. Often aimed so that a feature lies there, too.
+    pub fn tight(&self, random: &mut impl Rng, target: &Target) -> Target {
+        let place = self.truth.in_base(Feature::TipOrigin, &self.axes) * UNITS;
+        let half_sine = |s: f64| ((s * UNITS).ceil() as i32).min(ONE);
+        let turned = self.truth.tip_rotation();
+        let mut tight = target.clone();
+        tight.position =
+            [0, 1, 2].map(|k| Interval::clamped(place[k].floor() as i64, place[k].ceil() as i64));
+        match &mut tight.orientation {
+            Orientation::Axes(cones) => {
+                for (cone, axis) in cones.iter_mut().zip(&self.axes) {
+                    let actual = turned * axis;
+                    if let Some(turn) = self.aimed(random, &actual) {
+                        cone.base = (turn * actual).map(|b| (b * UNITS).round() as i32).into();
+                    }
+                    // The direction the integers stand for, and half the chord to the axis.
+                    let base = Vector3::from(cone.base.map(f64::from)).normalize();
+                    cone.half_sine = half_sine((actual - base).norm() / 2.0);
+                }
+            }
+            Orientation::Free => {}
+            Orientation::Near {
+                quaternion,
+                half_sine: own,
+            } => {
+                let axis = turned * Vector3::ith(random.random_range(0..3), 1.0);
+                if let Some(turn) = self.aimed(random, &axis) {
+                    let wanted = turn * turned;
+                    *quaternion = [wanted.w, wanted.i, wanted.j, wanted.k]
+                        .map(|q| (q * UNITS).round() as i32);
+                }
+                let [w, x, y, z] = quaternion.map(f64::from);
+                let wanted = UnitQuaternion::new_normalize(Quaternion::new(w, x, y, z));
+                *own = half_sine((wanted.inverse() * turned).imag().norm());
+            }
+        }
+        tight
+    }
+
+    /// A turn that moves an axis straight away from, or towards, a base axis or a joint's origin
+    /// seen from the tip; then the inner product of the two is as large as the turn allows.
+    fn aimed(&self, random: &mut impl Rng, axis: &Vector3<f64>) -> Option<UnitQuaternion<f64>> {
+        let joint = random.random_range(0..=self.truth.joints()) as u8;
+        let other = if joint == 0 {
+            Vector3::ith(random.random_range(0..3), 1.0)
+        } else {
+            let feature = if random.random() {
+                Feature::Axis(joint)
+            } else {
+                Feature::Origin(joint)
+            };
+            let tip = self.truth.in_base(Feature::TipOrigin, &self.axes);
+            let seen = self.truth.in_base(feature, &self.axes);
+            if feature.is_point() { seen - tip } else { seen }
+        };
+        let across = Unit::try_new(axis.cross(&other), 1e-3)?;
+        let angle = f64::exp2(random.random_range(-20.0..1.6));
+        let sign = if random.random() { 1.0 } else { -1.0 };
+        Some(UnitQuaternion::from_axis_angle(&across, sign * angle))
     }
 }
