@@ -99,7 +99,7 @@ pub fn machine(seed: u64, number: u64, arms: &[Arm], lie: Lie) -> Tally {
     let mut random = ChaCha8Rng::seed_from_u64(seed.wrapping_mul(1_000_003).wrapping_add(number));
     let mut tally = Tally::default();
     while tally.postures < POSTURES.into() {
-        let drawn = if number % ARMS_EVERY == 0 {
+        let drawn = if number.is_multiple_of(ARMS_EVERY) {
             let which = (number / ARMS_EVERY) as usize % arms.len();
             Some(arm(&mut random, &arms[which]))
         } else {

@@ -47,7 +47,7 @@ fn product(random: &mut impl Rng, bits: u32) -> (Product, i64) {
 /// Whether `numerator / divisor` lies in the interval, in units of one, or outside `[-1, 1]`.
 fn holds_quotient(own: Interval, numerator: i128, divisor: i128) -> bool {
     let sign = divisor.signum();
-    let (n, d) = (numerator * sign << 30, divisor * sign);
+    let (n, d) = ((numerator * sign) << 30, divisor * sign);
     let one = i128::from(ONE) * d;
     let (lo, hi) = (i128::from(own.lo) * d, i128::from(own.hi) * d);
     n.abs() > one || lo <= n && n <= hi

@@ -134,7 +134,7 @@ impl Tally {
             margins.least = margins.least.min(margin);
         }
         // Not a number is no proof of containment.
-        if !(margin >= -ALLOWANCE) {
+        if margin.is_nan() || margin < -ALLOWANCE {
             margins.violations += 1;
             if self.failures.len() < 4 {
                 self.failures
