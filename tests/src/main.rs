@@ -53,7 +53,7 @@ enum Command {
         #[arg(long, default_value_t = 500)]
         baseline: usize,
         /// Node budget of a decision
-        #[arg(long, default_value_t = 5000)]
+        #[arg(long, default_value_t = 10_000)]
         nodes: u64,
         /// Seed of the targets
         #[arg(long, default_value_t = 7)]

@@ -12,7 +12,7 @@ use super::is_standard_input;
 
 /// Nodes of the search tree a target may use before it is left undecided. In experience all but a
 /// few targets in a thousand need fewer than 100; raising it costs time on those few alone.
-const DEFAULT_NODES: NonZeroU64 = NonZeroU64::new(5000).unwrap();
+const DEFAULT_NODES: NonZeroU64 = NonZeroU64::new(10_000).unwrap();
 
 const STYLES: Styles = Styles::styled()
     .header(AnsiColor::Green.on_default().bold())

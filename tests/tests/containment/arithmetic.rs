@@ -2,6 +2,8 @@
 //! room of a unit or two would hide a rounding towards the inside.
 
 use balk_core::fixed::{Arc, Direction, Interval, ONE, ONE_SQUARED, Product, root_down, root_up};
+use balk_core::propagate::Goal;
+use balk_core::target::{Cone, Orientation, Target};
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 
@@ -222,5 +224,139 @@ fn arcs_of_boxes() {
             turn.is_wide() || holds(turn, wanted),
             "{a:?} less {b:?} in {turn:?}"
         );
+    }
+}
+
+/// What a prepared target says of one angle: its cosine and sine against squares of integers.
+fn check_angle(half: i64, cosine: Interval, sine: Interval) {
+    let (h, one) = (i128::from(half), i128::from(ONE_SQUARED));
+    assert!(
+        holds_quotient(cosine, one - 2 * h * h, one),
+        "cosine of {half}"
+    );
+    // (2 h sqrt(1 - h^2))^2, 120 fraction bits, against squares of 60.
+    let square = 4 * h * h * (one - h * h);
+    let size = |s: i32| i128::from(s) * i128::from(s) * one;
+    assert!(
+        size(sine.lo) <= square && square <= size(sine.hi),
+        "sine of {half}"
+    );
+}
+
+/// A component `n / d` of a unit vector may grow to `cos(acos(n / d) - w)` when the vector turns by
+/// at most `w`, twice the angle whose sine is `half`.
+fn check_spread(n: i128, d: i128, half: i64, own: Interval) {
+    let (n, d) = (
+        n as f64 / d as f64,
+        ((d - n) * (d + n)) as f64 / d as f64 / d as f64,
+    );
+    let half = half as f64 / f64::from(ONE);
+    let (cosine, sine) = (
+        1.0 - 2.0 * half * half,
+        2.0 * half * (1.0 - half * half).sqrt(),
+    );
+    let across = d.max(0.0).sqrt();
+    let most = if n >= cosine {
+        1.0
+    } else {
+        n * cosine + across * sine
+    };
+    let least = if -n >= cosine {
+        -1.0
+    } else {
+        n * cosine - across * sine
+    };
+    let units = f64::from(ONE);
+    assert!(
+        f64::from(own.hi) >= most * units - 1e-5,
+        "{n} {half} {own:?}"
+    );
+    assert!(
+        f64::from(own.lo) <= least * units + 1e-5,
+        "{n} {half} {own:?}"
+    );
+}
+
+/// Directions, cosines and sines of a prepared target beside exact ones.
+#[test]
+fn goals() {
+    let mut random = ChaCha8Rng::seed_from_u64(6);
+    let position = [Interval::UNIT; 3];
+    for _ in 0..ROUNDS / 8 {
+        let half = number(&mut random, 30).abs();
+        let quaternion = [(); 4].map(|()| number(&mut random, 30) as i32);
+        let orientation = Orientation::Near {
+            quaternion,
+            half_sine: half as i32,
+        };
+        let near = Target {
+            position,
+            orientation,
+        };
+        if let Goal::Near {
+            axes,
+            wanted,
+            cosine,
+            sine,
+            ..
+        } = Goal::new(&near)
+        {
+            check_angle(half, cosine, sine);
+            let [w, x, y, z] = quaternion.map(i128::from);
+            let norm = w * w + x * x + y * y + z * z;
+            let columns = [
+                [
+                    norm - 2 * (y * y + z * z),
+                    2 * (x * y + w * z),
+                    2 * (x * z - w * y),
+                ],
+                [
+                    2 * (x * y - w * z),
+                    norm - 2 * (x * x + z * z),
+                    2 * (y * z + w * x),
+                ],
+                [
+                    2 * (x * z + w * y),
+                    2 * (y * z - w * x),
+                    norm - 2 * (x * x + y * y),
+                ],
+            ];
+            for k in 0..9 {
+                let (i, j) = (k / 3, k % 3);
+                assert!(
+                    holds_quotient(wanted[i][j], columns[i][j], norm),
+                    "{quaternion:?}"
+                );
+                check_spread(columns[i][j], norm, half, axes[i][j]);
+            }
+        }
+        // A direction stands for every unit vector within two units of it.
+        let vector = [(); 3].map(|()| number(&mut random, 30) as i32);
+        let cone = Cone {
+            tip: vector,
+            base: vector,
+            half_sine: half as i32,
+        };
+        let cones = Target {
+            position,
+            orientation: Orientation::Axes([cone].into_iter().collect()),
+        };
+        let Goal::Axes { cones, .. } = Goal::new(&cones) else {
+            panic!("cones stay cones");
+        };
+        check_angle(half, cones[0].cosine, cones[0].sine);
+        for k in 0..3 {
+            for off in [-2, 0, 2] {
+                let one = i64::from(ONE);
+                let v = (i64::from(vector[k]) + off).clamp(-one, one);
+                for own in [cones[0].in_tip[k], cones[0].wanted[k]] {
+                    assert!(
+                        i64::from(own.lo) <= v && v <= i64::from(own.hi),
+                        "{vector:?}"
+                    );
+                }
+                check_spread(v.into(), one.into(), half, cones[0].in_base[k]);
+            }
+        }
     }
 }

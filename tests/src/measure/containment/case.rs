@@ -181,7 +181,7 @@ impl Case<'_> {
                 continue;
             };
             let margin = (deviation - lo as f64).min(hi as f64 - deviation);
-            tally.note(Kinds::Row, margin, lo == hi, || {
+            tally.note(Kinds::Span, margin, lo == hi, || {
                 format!("{}: unknown {v} {deviation} in {own:?}", self.name)
             });
         }

@@ -21,9 +21,9 @@ pub enum Kinds {
     Tip,
     /// Squared lengths of all of these.
     Square,
-    /// Arcs, cosines, sines and lengths of variables and joints.
+    /// Arcs, cosines, sines and lengths of variables and joints; the unknowns of rows.
     Span,
-    /// First-order rows and the boxes of their unknowns.
+    /// First-order forms of features and sums of them.
     Row,
     /// Nodes that hold a posture and must not be called empty.
     Open,
