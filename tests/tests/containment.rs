@@ -24,11 +24,15 @@ fn boxes_hold_the_truth() {
     assert_eq!(tally.violations(), 0, "{}", tally.failures.join("\n"));
 }
 
-/// The comparison itself: a truth a ten-millionth off is found missing in every kind of box.
+/// The comparison itself: a truth a ten-millionth off is found missing in every kind of box. Rows
+/// have more room than that (512 units of 2^-30 for rounding), so they are left out here.
 #[test]
 fn a_false_truth_is_found_out() {
     let tally = checks(2_000, 2, Lie { values: 1e-7 });
-    for kind in Kinds::ALL.into_iter().filter(|&kind| kind != Kinds::Open) {
+    for kind in Kinds::ALL
+        .into_iter()
+        .filter(|&kind| !matches!(kind, Kinds::Open | Kinds::Row))
+    {
         assert!(tally.of(kind).violations > 100, "{}", kind.name());
     }
 }

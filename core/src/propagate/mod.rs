@@ -312,38 +312,31 @@ impl<'a> Network<'a> {
         let stride = self.stride();
         for (p, &first) in self.features.iter().enumerate() {
             for (q, &second) in self.features.iter().enumerate().skip(p + 1) {
-                match (first, second) {
-                    (Feature::Origin(a), Feature::Origin(b)) => {
-                        let (at, to) = (q * stride + a as usize, p * stride + b as usize);
-                        let square = self.cells[to].square_after;
-                        let one = self.cells[at].square_after.meet(square)?;
-                        let square = self.cells[at].square_after;
-                        let two = self.cells[to].square_after.meet(square)?;
-                        if one {
-                            self.cells[at].pending |= Cell::JOINT;
-                            self.cells[at + 1].pending |= Cell::LINK;
-                        }
-                        if two {
-                            self.cells[to].pending |= Cell::JOINT;
-                            self.cells[to + 1].pending |= Cell::LINK;
-                        }
+                let ((Feature::Origin(a), Feature::Origin(b))
+                | (Feature::Axis(a), Feature::Axis(b))) = (first, second)
+                else {
+                    continue;
+                };
+                let (at, to) = (q * stride + a as usize, p * stride + b as usize);
+                let (mut one, mut two) = (self.cells[at], self.cells[to]);
+                let (at_changed, to_changed) = if first.is_point() {
+                    (
+                        one.square_after.meet(two.square_after)?,
+                        two.square_after.meet(one.square_after)?,
+                    )
+                } else {
+                    (
+                        one.after[2].meet(two.after[2])?,
+                        two.after[2].meet(one.after[2])?,
+                    )
+                };
+                self.cells[at] = one;
+                self.cells[to] = two;
+                for (changed, cell) in [(at_changed, at), (to_changed, to)] {
+                    if changed {
+                        self.cells[cell].pending |= Cell::JOINT;
+                        self.cells[cell + 1].pending |= Cell::LINK;
                     }
-                    (Feature::Axis(a), Feature::Axis(b)) => {
-                        let (at, to) = (q * stride + a as usize, p * stride + b as usize);
-                        let z = self.cells[to].after[2];
-                        let one = self.cells[at].after[2].meet(z)?;
-                        let z = self.cells[at].after[2];
-                        let two = self.cells[to].after[2].meet(z)?;
-                        if one {
-                            self.cells[at].pending |= Cell::JOINT;
-                            self.cells[at + 1].pending |= Cell::LINK;
-                        }
-                        if two {
-                            self.cells[to].pending |= Cell::JOINT;
-                            self.cells[to + 1].pending |= Cell::LINK;
-                        }
-                    }
-                    _ => {}
                 }
             }
         }
