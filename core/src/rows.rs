@@ -147,11 +147,14 @@ impl Expansion {
                     versine = ONE as i64 - about.cosine().lo as i64;
                 }
                 Motion::Slide => {
-                    let length =
-                        half_way(variable.length) * joint.multiple as i64 + half_way(joint.shift);
-                    let step = apply(&at, [0, 0, length as i32]);
-                    origin = [0, 1, 2].map(|k| origin[k] + step[k]);
-                    noise += joint.shift.width();
+                    // Spans wider than the limits may put the middle far outside the reach: nothing
+                    // wraps, and the noise grows with the length.
+                    let multiple = joint.multiple as i64;
+                    let length = half_way(variable.length) * multiple + half_way(joint.shift);
+                    origin = [0, 1, 2].map(|k| origin[k] + scaled(at[k][2] as i64, length));
+                    let extent =
+                        variable.length.magnitude() * multiple.abs() + joint.shift.magnitude();
+                    noise += joint.shift.width() + 2 * ROUNDING * (extent >> FRACTION_BITS);
                 }
             }
             let _ = expansion.origins.push(origin);

@@ -4,6 +4,7 @@ use balk::kinematics::{meets, tip_pose};
 use balk::model::{Orientation, Target};
 use balk::search::{Screening, Solver, Verdict};
 use balk_tests::measure::soundness;
+use indicatif::ProgressBar;
 use nalgebra::Vector3;
 
 /// The packed machine must admit the posture; one the packer turns away claims nothing.
@@ -108,7 +109,7 @@ fn exact_ratio_in_rows() {
 /// to the tolerance, targets from a point to the whole reach.
 #[test]
 fn random_machines() {
-    let tally = soundness::run(1000, 10, 6, 3);
+    let tally = soundness::run(1000, 10, 6, 3, &ProgressBar::hidden());
     assert!(tally.machines >= 800, "{} machines", tally.machines);
     assert!(
         tally.reachable > tally.targets / 10,

@@ -4,10 +4,10 @@ use crate::families::{Family, NAMES};
 use crate::random::{Sample, posture, target};
 use balk::model::Target;
 use balk::search::{Screening, Solver, Verdict};
+use indicatif::ProgressBar;
 use rand::SeedableRng;
 use rand_chacha::ChaCha8Rng;
-use std::num::NonZero;
-use std::thread;
+use rayon::prelude::*;
 
 /// Splits at which refusals are tried.
 const SPLITS: [u16; 3] = [1, 4, 16];
@@ -125,35 +125,27 @@ fn judge(solver: &Solver, wanted: &Target, nodes: u64, tally: &mut Tally) {
 }
 
 /// Many machines on every processor; the same answers for any number of them.
-pub fn run(machines: u64, targets: u32, nodes: u64, seed: u64) -> Tally {
-    let threads = thread::available_parallelism().map_or(1, NonZero::get);
-    let share = |first: usize| -> Vec<(u64, Tally)> {
-        (first as u64..machines)
-            .step_by(threads)
-            .map(|i| {
-                let seed = seed.wrapping_mul(1_000_003).wrapping_add(i);
-                (i, machine(seed, targets, nodes))
-            })
-            .collect()
-    };
-    let mut tallies: Vec<(u64, Tally)> = thread::scope(|scope| {
-        let workers: Vec<_> = (0..threads)
-            .map(|first| scope.spawn(move || share(first)))
-            .collect();
-        let results = workers.into_iter().map(|w| w.join());
-        results
-            .flat_map(|r| r.unwrap_or_else(|panic| std::panic::resume_unwind(panic)))
-            .collect()
-    });
-    tallies.sort_by_key(|(i, _)| *i);
-    tallies
-        .into_iter()
-        .fold(Tally::default(), |sum, (_, tally)| sum.plus(tally))
+pub fn run(machines: u64, targets: u32, nodes: u64, seed: u64, progress: &ProgressBar) -> Tally {
+    progress.set_length(machines);
+    let tallies: Vec<Tally> = (0..machines)
+        .into_par_iter()
+        .map(|i| {
+            let seed = seed.wrapping_mul(1_000_003).wrapping_add(i);
+            let tally = machine(seed, targets, nodes);
+            progress.inc(1);
+            if tally.wrong() > 0 {
+                progress.suspend(|| eprintln!("{}", tally.failures.join("\n")));
+            }
+            tally
+        })
+        .collect();
+    progress.finish_and_clear();
+    tallies.into_iter().fold(Tally::default(), Tally::plus)
 }
 
 /// Runs and prints one table, then what is needed to repeat the first failures.
 pub fn print(machines: u64, targets: u32, nodes: u64, seed: u64) {
-    let tally = run(machines, targets, nodes, seed);
+    let tally = run(machines, targets, nodes, seed, &ProgressBar::new(0));
     println!("| machines | targets | refused at 1 / 4 / 16 splits | unreachable | reachable |");
     println!("|{}", "---|".repeat(5));
     let [one, four, sixteen] = tally.refused;

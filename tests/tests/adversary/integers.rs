@@ -156,6 +156,39 @@ fn boxes_and_rows_hold_the_truth() {
     }
 }
 
+/// Spans may be wider than the limits: the middle of a sliding follower then lies far outside the
+/// reach, and neither boxes nor rows may lose the truth.
+#[test]
+fn spans_beyond_the_limits_hold_the_truth() {
+    let mut widened = 0;
+    for seed in 0..4000 {
+        let mut random = ChaCha8Rng::seed_from_u64(seed);
+        let planted = Planted::draw(&mut random);
+        let (target, axes) = planted.target(&mut random);
+        let chain = planted.machine.chain();
+        let goal = Goal::new(&target);
+        let mut cells = vec![Cell::ANYTHING; cells_for(chain.joints.len())];
+        let rules = Options::default().rules;
+        let mut network = Network::new(chain, &goal, rules, &mut cells);
+        let mut spans = limits(chain);
+        for (span, variable) in spans.iter_mut().zip(chain.variables) {
+            if variable.motion == Motion::Slide {
+                span.length.lo = random.random_range(-ONE..=span.length.lo);
+                span.length.hi = random.random_range(span.length.hi..=ONE);
+                widened += 1;
+            }
+        }
+        assert!(network.propagate(&mut spans).is_ok(), "{seed}: refused");
+        planted.assert_spans(&spans, seed);
+        planted.assert_views(&network, &axes, seed);
+        planted.assert_rows(&network, &spans, &axes, seed);
+        let relaxed = relax(&network, &mut spans, &mut NodeSimplex::new(), 200);
+        assert!(relaxed.is_err(), "{seed}: refused by rows");
+        planted.assert_spans(&spans, seed);
+    }
+    assert!(widened > 1000, "{widened}");
+}
+
 /// Whatever a fieldbus delivers is answered; an orientation that is none is not refused.
 #[test]
 fn any_bits_for_a_target() {

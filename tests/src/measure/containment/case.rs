@@ -198,15 +198,17 @@ impl Case<'_> {
             let weights = truth.map(|t| ((t * 1e3).sin() * UNITS / 2.0).round());
             let mut sum = Form::ZERO;
             for k in 0..3 {
-                self.row(&forms[k], truth[k], &deviations, tally);
+                self.row(&forms[k], truth[k], &deviations, false, tally);
                 sum.add(&forms[k], weights[k] as i64, 0);
             }
-            self.row(&sum, weights.dot(&truth) / UNITS, &deviations, tally);
+            let value = weights.dot(&truth) / UNITS;
+            self.row(&sum, value, &deviations, true, tally);
         }
     }
 
-    /// A form that stands for a quantity of this value (units).
-    fn row(&self, form: &Form, value: f64, deviations: &[f64], tally: &mut Tally) {
+    /// A form that stands for a quantity of this value (units). A weighted sum's room is as small
+    /// as its weights and says nothing by itself.
+    fn row(&self, form: &Form, value: f64, deviations: &[f64], weighted: bool, tally: &mut Tally) {
         let linear = form.between(Some(value.floor() as i64), Some(value.ceil() as i64));
         let row = linear.row();
         let sum: f64 = row
@@ -216,7 +218,7 @@ impl Case<'_> {
             .sum();
         let low = row.range.lower.map_or(f64::INFINITY, |l| sum - l as f64);
         let high = row.range.upper.map_or(f64::INFINITY, |h| h as f64 - sum);
-        tally.note(Kinds::Row, low.min(high) / UNITS, false, || {
+        tally.note(Kinds::Row, low.min(high) / UNITS, weighted, || {
             format!("{}: value {value}, terms {sum}, {:?}", self.name, row.range)
         });
     }
