@@ -196,7 +196,7 @@ pub fn test(
 /// Screens a target: refuses it only with proof.
 ///
 /// Takes at most `splits` node tests and twice as many propagations per cut and candidate; no
-/// heap, no recursion, no panic.
+/// heap, no recursion.
 pub fn screen<'w, const N: usize, const CELLS: usize, const PARTS: usize>(
     machine: &Machine<N>,
     target: &Target,

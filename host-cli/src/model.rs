@@ -16,6 +16,20 @@ pub struct Machine {
     pub tips: Vec<Tip>,
 }
 
+impl Machine {
+    /// Indices of the joints between the base and a tip, in that order.
+    pub fn chain(&self, tip: usize) -> Vec<usize> {
+        let mut chain = Vec::new();
+        let mut at = self.tips[tip].parent;
+        while let Some(joint) = at {
+            chain.push(joint);
+            at = self.joints[joint].parent;
+        }
+        chain.reverse();
+        chain
+    }
+}
+
 /// One joint with the placement of its frame in its parent's frame.
 #[derive(Clone, Debug)]
 pub struct Joint {

@@ -37,16 +37,11 @@ type Column = Vector6<f64>;
 impl Linkage {
     /// The chain from base to `tip`, driven by `drives`.
     pub fn new(machine: &Machine, tip: usize, drives: &[Drive]) -> Linkage {
+        let path = machine.chain(tip);
         let tip = &machine.tips[tip];
-        let mut path = Vec::new();
-        let mut at = tip.parent;
-        while let Some(joint) = at {
-            path.push(joint);
-            at = machine.joints[joint].parent;
-        }
         let mut links: Vec<Link> = Vec::new();
         let mut open = Isometry3::identity();
-        for &index in path.iter().rev() {
+        for index in path {
             let joint = &machine.joints[index];
             open *= joint.placement;
             if joint.kind == Kind::Fixed {

@@ -53,12 +53,22 @@ impl Kind {
     }
 }
 
+/// Reads a file of `machines/`, without its ending.
+fn machine(name: &str) -> Machine {
+    let path = Path::new(env!("CARGO_MANIFEST_DIR")).join(format!("machines/{name}.toml"));
+    let bytes = std::fs::read(&path).expect("the machine's file is there");
+    balk::read::machine(&bytes, name).expect("the machine's file is well formed")
+}
+
+/// Reads an arm of `machines/published/`.
+pub fn published(name: &str) -> Machine {
+    machine(&format!("published/{name}"))
+}
+
 impl Family {
     /// Reads an arm of `machines/`.
     pub fn read(name: &'static str) -> Family {
-        let path = Path::new(env!("CARGO_MANIFEST_DIR")).join(format!("machines/{name}.toml"));
-        let bytes = std::fs::read(&path).expect("the arm's file is there");
-        let machine = balk::read::machine(&bytes, name).expect("the arm's file is well formed");
+        let machine = machine(name);
         let length = |v: &Vector3<f64>| v.norm();
         let reach = machine
             .joints

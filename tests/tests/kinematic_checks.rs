@@ -13,6 +13,7 @@ use balk_core::fixed::{Arc, Direction, ONE};
 use balk_core::propagate::cell::{Cell, JointSpan};
 use balk_core::propagate::{Goal, Network};
 use balk_core::screen::{cells_for, limits};
+use balk_tests::families::published as machine;
 use balk_tests::rotation;
 use closed_form::{horizontal_reaches, textbook_postures, textbook_reaches};
 use nalgebra::{Isometry3, Matrix3, Rotation3, Vector3};
@@ -22,14 +23,6 @@ use std::f64::consts::{PI, TAU};
 
 /// Nodes any of these questions may take.
 const NODES: u64 = 2000;
-
-fn machine(name: &str) -> Machine {
-    let file = format!(
-        "{}/machines/published/{name}.toml",
-        env!("CARGO_MANIFEST_DIR")
-    );
-    read::machine(&std::fs::read(&file).unwrap(), &file).unwrap()
-}
 
 fn degrees<const N: usize>(values: [f64; N]) -> [f64; N] {
     values.map(f64::to_radians)

@@ -2,8 +2,8 @@
 
 use balk::kinematics::meets;
 use balk::model::{Machine, Orientation, Target};
-use balk::read;
 use balk::search::{Screening, Solver, Verdict};
+use balk_tests::families::published as machine;
 use nalgebra::{Rotation3, Vector3};
 use rand::{Rng, SeedableRng};
 use rand_chacha::ChaCha8Rng;
@@ -11,14 +11,6 @@ use std::f64::consts::{PI, TAU};
 
 /// Nodes any of these questions may take.
 const NODES: u64 = 2000;
-
-fn machine(name: &str) -> Machine {
-    let file = format!(
-        "{}/machines/published/{name}.toml",
-        env!("CARGO_MANIFEST_DIR")
-    );
-    read::machine(&std::fs::read(&file).unwrap(), &file).unwrap()
-}
 
 /// A point of the plane, with the heading of the last link when one is asked for.
 fn planar(x: f64, y: f64, heading: Option<f64>, within: f64) -> Target {

@@ -94,14 +94,8 @@ pub struct Drive {
 /// # Errors
 /// [`PackError`] names the joint or tip and the reason.
 pub fn pack(machine: &model::Machine, tip: usize) -> Result<Pack, PackError> {
+    let path = machine.chain(tip);
     let tip = &machine.tips[tip];
-    let mut path = Vec::new();
-    let mut at = tip.parent;
-    while let Some(joint) = at {
-        path.push(joint);
-        at = machine.joints[joint].parent;
-    }
-    path.reverse();
 
     // Stretches between moving joints, each ending with the joint's axis along z.
     let mut stretches = Vec::new();
