@@ -4,6 +4,7 @@
 
 pub mod certificate;
 pub mod fixed;
+pub mod image;
 pub mod machine;
 pub mod propagate;
 pub mod record;

@@ -1,7 +1,7 @@
 //! The controller's entry: refuse a target with proof, or let it pass with the reason.
 
-use crate::fixed::Empty;
-use crate::machine::Machine;
+use crate::fixed::{Arc, Direction, Empty, Interval};
+use crate::machine::{Machine, Motion, Variable};
 use crate::propagate::cell::{Cell, JointSpan};
 use crate::propagate::{Branch, Chain, Goal, MOST_JOINTS, Network, Rules, Spans};
 use crate::relaxation::{NodeSimplex, Relaxed, relax};
@@ -55,13 +55,13 @@ pub const fn cells_for(joints: usize) -> usize {
     (joints + 2) * (2 * joints + 4)
 }
 
-/// Working memory for up to four joints: at most 13,576 bytes.
+/// Working memory for up to four joints: at most 9,864 bytes.
 pub type Workspace4 = Workspace<{ cells_for(4) }, 16>;
-/// Working memory for up to six joints: at most 18,504 bytes.
+/// Working memory for up to six joints: at most 14,792 bytes.
 pub type Workspace6 = Workspace<{ cells_for(6) }, 16>;
-/// Working memory for up to seven joints: at most 21,496 bytes.
+/// Working memory for up to seven joints: at most 17,784 bytes.
 pub type Workspace7 = Workspace<{ cells_for(7) }, 16>;
-/// Working memory for up to eight joints: at most 24,840 bytes.
+/// Working memory for up to eight joints: at most 21,128 bytes.
 pub type Workspace8 = Workspace<{ cells_for(8) }, 16>;
 
 /// A part of the joint space waiting to be shown empty.
@@ -73,7 +73,49 @@ enum Part {
     /// Already shown, when it was cut off.
     Closed(Empty),
     /// Still to be looked at.
-    Open(Spans),
+    Open(Waiting),
+}
+
+/// Spans while they wait: the ends of every arc or length and nothing that follows from them, to
+/// save memory.
+struct Waiting {
+    ends: [[i32; 4]; MOST_JOINTS],
+    /// One bit for every arc that is the full circle.
+    full: u8,
+}
+
+impl Waiting {
+    fn new(spans: &Spans, variables: &[Variable]) -> Waiting {
+        let mut waiting = Waiting {
+            ends: [[0; 4]; MOST_JOINTS],
+            full: 0,
+        };
+        let own = spans.iter().zip(variables).zip(&mut waiting.ends);
+        for (v, ((span, variable), ends)) in own.enumerate() {
+            match variable.motion {
+                Motion::Turn => {
+                    let Arc { lo, hi, full } = span.arc;
+                    *ends = [lo.x, lo.y, hi.x, hi.y];
+                    waiting.full |= u8::from(full) << v;
+                }
+                Motion::Slide => *ends = [span.length.lo, span.length.hi, 0, 0],
+            }
+        }
+        waiting
+    }
+
+    fn spans(&self, variables: &[Variable]) -> Spans {
+        let own = variables.iter().zip(&self.ends).enumerate();
+        own.map(|(v, (variable, &[a, b, c, d]))| match variable.motion {
+            Motion::Turn => JointSpan::of_arc(Arc {
+                lo: Direction { x: a, y: b },
+                hi: Direction { x: c, y: d },
+                full: self.full >> v & 1 == 1,
+            }),
+            Motion::Slide => JointSpan::of_length(Interval { lo: a, hi: b }),
+        })
+        .collect()
+    }
 }
 
 /// One step of a refusal's tree, in the order of a walk that takes the lower part first.
@@ -237,8 +279,10 @@ fn walk<const PARTS: usize>(
 ) -> Result<(), Reason> {
     let mut splits = 1;
     let full = |_| Reason::Capacity;
+    let variables = network.chain().variables;
+    let whole = Waiting::new(&limits(network.chain()), variables);
     parts
-        .push(Part::Open(limits(network.chain())))
+        .push(Part::Open(whole))
         .map_err(|_| Reason::Capacity)?;
     while let Some(part) = parts.pop() {
         let mut spans = match part {
@@ -246,7 +290,7 @@ fn walk<const PARTS: usize>(
                 steps.push(Step::Bounds).map_err(full)?;
                 continue;
             }
-            Part::Open(spans) => spans,
+            Part::Open(waiting) => waiting.spans(variables),
         };
         let open = match test(network, &mut spans, simplex, options.pivots) {
             Tested::Bounds(Empty { .. }) => {
@@ -276,7 +320,9 @@ fn walk<const PARTS: usize>(
         splits += 1;
         steps.push(Step::Cut(variable as u8)).map_err(full)?;
         for half in [upper, lower] {
-            let part = half.map_or_else(Part::Closed, Part::Open);
+            let part = half.map_or_else(Part::Closed, |spans| {
+                Part::Open(Waiting::new(&spans, variables))
+            });
             parts.push(part).map_err(|_| Reason::Capacity)?;
         }
     }
@@ -289,8 +335,8 @@ pub fn limits(chain: Chain) -> Spans {
         .variables
         .iter()
         .map(|variable| match variable.motion {
-            crate::machine::Motion::Turn => JointSpan::of_arc(variable.arc),
-            crate::machine::Motion::Slide => JointSpan::of_length(variable.length),
+            Motion::Turn => JointSpan::of_arc(variable.arc),
+            Motion::Slide => JointSpan::of_length(variable.length),
         })
         .collect()
 }

@@ -8,25 +8,25 @@ fn presets_take_no_more_than_stated() {
     let sizes = [
         (
             size_of::<Workspace4>(),
-            13_576,
+            9_864,
             size_of::<Machine<4>>(),
             800,
         ),
         (
             size_of::<Workspace6>(),
-            18_504,
+            14_792,
             size_of::<Machine<6>>(),
             1_136,
         ),
         (
             size_of::<Workspace7>(),
-            21_496,
+            17_784,
             size_of::<Machine<7>>(),
             1_304,
         ),
         (
             size_of::<Workspace8>(),
-            24_840,
+            21_128,
             size_of::<Machine<8>>(),
             1_472,
         ),

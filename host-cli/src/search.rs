@@ -11,7 +11,7 @@ use crate::posture::Linkage;
 use balk_core::machine::Motion;
 use balk_core::propagate::cell::{Cell, JointSpan};
 use balk_core::propagate::{Branch, Goal, Network, Spans};
-use balk_core::record::{fingerprint, record};
+use balk_core::record::{RecordBytes, fingerprint, record};
 use balk_core::relaxation::{NodeSimplex, Relaxed, guess};
 use balk_core::screen::{self, Options, Step, Tested, Workspace8, cells_for};
 use rayon::prelude::*;
@@ -82,8 +82,8 @@ pub enum Screening {
     },
     /// Proved unreachable.
     Refused {
-        /// The record a controller would log.
-        record: Vec<u8>,
+        /// The record a controller would log, as the first of its log.
+        record: RecordBytes,
     },
 }
 
@@ -123,27 +123,33 @@ impl Solver {
 
     /// What a controller answers with at most `splits` parts of the joint space.
     pub fn screen(&self, target: &Target, splits: u16) -> Screening {
-        let packed = pack_target(target, self.pack.scale);
         let options = Options {
             splits,
             ..self.options
         };
+        self.screen_packed(&pack_target(target, self.pack.scale), &options)
+    }
+
+    /// What a controller answers to a target it has received.
+    pub fn screen_packed(
+        &self,
+        target: &balk_core::target::Target,
+        options: &Options,
+    ) -> Screening {
         let mut workspace = Box::new(Workspace8::new());
-        match screen::screen(&self.pack.machine, &packed, &options, &mut workspace) {
+        match screen::screen(&self.pack.machine, target, options, &mut workspace) {
             screen::Verdict::Passed(reason) => Screening::Passed {
                 reason: reason.text(),
             },
-            screen::Verdict::Refused(refusal) => {
-                match record(self.fingerprint, &packed, &options, &refusal) {
-                    Ok(record) => Screening::Refused {
-                        record: record.to_vec(),
-                    },
-                    Err(_) => Screening::Passed {
-                        reason: screen::Reason::Capacity.text(),
-                    },
-                }
-            }
+            screen::Verdict::Refused(refusal) => Screening::Refused {
+                record: record(self.fingerprint, target, options, &refusal),
+            },
         }
+    }
+
+    /// Fingerprint of the packed chain, as records carry it.
+    pub fn fingerprint(&self) -> u64 {
+        self.fingerprint
     }
 
     /// Decides one target with at most `nodes` parts of the joint space.

@@ -15,7 +15,9 @@ pub const NAMES: [&str; 3] = ["spherical", "offset", "seven"];
 pub struct Family {
     /// Its name.
     pub name: &'static str,
-    /// As read from its file.
+    /// Its file.
+    pub text: String,
+    /// As read from it.
     pub machine: Machine,
     /// Answers questions about its tip.
     pub solver: Solver,
@@ -54,21 +56,22 @@ impl Kind {
 }
 
 /// Reads a file of `machines/`, without its ending.
-fn machine(name: &str) -> Machine {
+fn machine(name: &str) -> (String, Machine) {
     let path = Path::new(env!("CARGO_MANIFEST_DIR")).join(format!("machines/{name}.toml"));
-    let bytes = std::fs::read(&path).expect("the machine's file is there");
-    balk::read::machine(&bytes, name).expect("the machine's file is well formed")
+    let text = std::fs::read_to_string(&path).expect("the machine's file is there");
+    let machine = balk::read::machine(text.as_bytes(), name).expect("it is well formed");
+    (text, machine)
 }
 
 /// Reads an arm of `machines/published/`.
 pub fn published(name: &str) -> Machine {
-    machine(&format!("published/{name}"))
+    machine(&format!("published/{name}")).1
 }
 
 impl Family {
     /// Reads an arm of `machines/`.
     pub fn read(name: &'static str) -> Family {
-        let machine = machine(name);
+        let (text, machine) = machine(name);
         let length = |v: &Vector3<f64>| v.norm();
         let reach = machine
             .joints
@@ -82,6 +85,7 @@ impl Family {
             solver: Solver::new(&machine, 0).expect("the arm can be packed"),
             centre: machine.joints[0].placement.translation.vector,
             reach,
+            text,
             machine,
         }
     }

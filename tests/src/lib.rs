@@ -13,6 +13,8 @@ pub mod measure {
     pub mod families;
     pub mod kernel;
     pub mod lifted;
+    pub mod proofs;
+    pub mod records;
     pub mod simplex;
     pub mod soundness;
 }

@@ -76,6 +76,24 @@ enum Command {
         #[arg(long, value_delimiter = ',', default_value = "pose,cone,box,point")]
         kinds: Vec<String>,
     },
+    /// Proofs of unreachable targets: size, time, and what the independent checker says
+    Proofs {
+        /// Kinds of target
+        #[arg(long, value_enum, value_delimiter = ',', default_values_t = Kind::ALL)]
+        kinds: Vec<Kind>,
+        /// Targets per arm and kind
+        #[arg(long, default_value_t = 1000)]
+        targets: usize,
+        /// Node budget of a decision
+        #[arg(long, default_value_t = 10_000)]
+        nodes: u64,
+        /// Most parts of a proof
+        #[arg(long, default_value_t = 2000)]
+        parts: u64,
+        /// Seed of the targets
+        #[arg(long, default_value_t = 7)]
+        seed: u64,
+    },
     /// Planted postures: nothing may be refused or called unreachable
     Soundness {
         /// Random machines
@@ -137,6 +155,13 @@ fn main() {
             let kinds: Vec<&str> = kinds.iter().map(String::as_str).collect();
             measure::lifted::run(roots, below, targets, &kinds);
         }
+        Command::Proofs {
+            kinds,
+            targets,
+            nodes,
+            parts,
+            seed,
+        } => measure::proofs::run(&kinds, targets, nodes, parts, seed),
         Command::Soundness {
             machines,
             targets,

@@ -29,11 +29,19 @@ const ROUNDS: usize = 12;
 /// Which rules run. All of them, except in ablations.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 #[cfg_attr(feature = "defmt", derive(defmt::Format))]
-pub struct Rules(pub u32);
+pub struct Rules(pub u8);
 
 impl Rules {
-    /// Every rule.
-    pub const ALL: Rules = Rules(u32::MAX);
+    /// Every rule: the union of those below.
+    pub const ALL: Rules = Rules(
+        Self::ORIGINS.0
+            | Self::AXES.0
+            | Self::BASE.0
+            | Self::MUTUAL.0
+            | Self::SPREAD.0
+            | Self::SECTOR.0
+            | Self::SHAVING.0,
+    );
     /// Joint origins as features.
     pub const ORIGINS: Rules = Rules(1);
     /// Joint axes as features.

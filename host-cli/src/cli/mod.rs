@@ -2,6 +2,8 @@
 
 mod answer;
 mod arguments;
+mod audit;
+mod check;
 mod output;
 mod progress;
 mod tally;
@@ -9,19 +11,22 @@ mod tally;
 pub use tally::Status;
 
 use std::ffi::OsString;
-use std::fs::File;
+use std::fs::{self, File};
 use std::io::{self, BufReader, IsTerminal, Read, Write};
+use std::num::NonZeroUsize;
 use std::path::Path;
 
+use balk_core::record::Chain;
 use clap::Parser;
 use rayon::prelude::*;
 
+use crate::log::LogError;
 use crate::model::Machine;
 use crate::pack::PackError;
 use crate::read::{self, Defect, Lines};
 
-use answer::Solvers;
-use arguments::{Arguments, Inputs, Job};
+use answer::{Answer, Solvers};
+use arguments::{Arguments, Command, Inputs, Proofs, Task};
 use output::Printer;
 use progress::Progress;
 use tally::Tally;
@@ -49,8 +54,23 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> Status {
             };
         }
     };
-    match answer_all(&arguments.command.into()) {
-        Ok(tally) => tally.status(),
+    let ended = match arguments.command {
+        Command::Audit(inputs) => audit::run(&inputs),
+        Command::Check(inputs) => check::run(&inputs),
+        Command::Decide {
+            inputs,
+            nodes,
+            proofs,
+            text,
+        } => {
+            let proofs = proofs.map(|folder| Proofs { folder, text });
+            let nodes = nodes.get();
+            answer_all(&inputs, Task::Decide { nodes, proofs })
+        }
+        Command::Screen { inputs, splits } => answer_all(&inputs, Task::Screen { splits }),
+    };
+    match ended {
+        Ok(status) => status,
         Err(failure) => {
             complain(&failure);
             failure.status()
@@ -58,13 +78,17 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> Status {
     }
 }
 
-/// Why a run ended before its last target.
+/// Why a run ended before its last target or record.
 #[derive(Debug, thiserror::Error)]
 enum Failure {
     #[error("{0}")]
     Defect(#[from] Defect),
+    #[error("{folder}: {source}")]
+    Folder { folder: String, source: io::Error },
     #[error("{file}: {source}")]
     Input { file: String, source: io::Error },
+    #[error("{file}: {source}")]
+    Log { file: String, source: LogError },
     #[error("{file}: {source}")]
     Machine { file: String, source: PackError },
     #[error("standard output: {0}")]
@@ -76,8 +100,11 @@ enum Failure {
 impl Failure {
     fn status(&self) -> Status {
         match self {
-            Failure::Defect(_) | Failure::Input { .. } | Failure::Machine { .. } => Status::Input,
-            Failure::Output(_) | Failure::Threads(_) => Status::Fault,
+            Failure::Defect(_)
+            | Failure::Input { .. }
+            | Failure::Log { .. }
+            | Failure::Machine { .. } => Status::Input,
+            Failure::Folder { .. } | Failure::Output(_) | Failure::Threads(_) => Status::Fault,
         }
     }
 }
@@ -87,20 +114,29 @@ fn complain(message: &dyn std::fmt::Display) {
     let _ = writeln!(io::stderr(), "{message}");
 }
 
-/// Answers every target of the job's file, in order.
-fn answer_all(job: &Job) -> Result<Tally, Failure> {
+/// Answers every target of a file, in order.
+fn answer_all(inputs: &Inputs, task: Task) -> Result<Status, Failure> {
     let Inputs {
         machine,
         targets,
         json,
         threads,
         quiet,
-    } = &job.inputs;
-    let (machine, machine_file) = read_machine(machine)?;
-    let solvers = Solvers::new(&machine, job.task).map_err(|source| Failure::Machine {
-        file: machine_file,
-        source,
-    })?;
+    } = inputs;
+    let MachineFile { machine, file, text } = read_machine(machine)?;
+    let screening = matches!(task, Task::Screen { .. });
+    if let Task::Decide {
+        proofs: Some(Proofs { folder, .. }),
+        ..
+    } = &task
+    {
+        fs::create_dir_all(folder).map_err(|source| Failure::Folder {
+            folder: folder.display().to_string(),
+            source,
+        })?;
+    }
+    let solvers = Solvers::new(&machine, &text, task)
+        .map_err(|source| Failure::Machine { file, source })?;
     let targets_file = name_of(targets);
     let input_failure = |source| Failure::Input {
         file: targets_file.clone(),
@@ -108,52 +144,81 @@ fn answer_all(job: &Job) -> Result<Tally, Failure> {
     };
     let (source, size) = open(targets).map_err(input_failure)?;
     let mut lines = Lines::new(BufReader::with_capacity(READ_BYTES, source));
-    let pool = rayon::ThreadPoolBuilder::new()
-        .num_threads(threads.map_or(0, |n| n.get()))
-        .stack_size(STACK_BYTES)
-        .build()?;
+    let pool = worker_threads(*threads)?;
     let mut printer = Printer::new(*json, *quiet);
-    let mut progress = Progress::new(size, *quiet || io::stdout().is_terminal());
+    let mut progress = Progress::new(size, "targets", *quiet || io::stdout().is_terminal());
     let mut tally = Tally::default();
+    let mut chain = Chain::new();
+    let mut unproved = false;
     loop {
         let chunk = lines.next_chunk(CHUNK_LINES).map_err(input_failure)?;
         if chunk.is_empty() {
             break;
         }
-        let rows: Vec<_> = pool.install(|| {
-            let answer = |line| solvers.answer(line, &targets_file);
-            chunk
-                .par_iter()
-                .map(|line| printer.row(&answer(line), &machine))
-                .collect()
-        });
+        let answer = |line| solvers.answer(line, &targets_file);
+        let mut answers: Vec<_> = pool.install(|| chunk.par_iter().map(answer).collect());
+        // In the order of the input, whatever the number of threads.
+        for answer in &mut answers {
+            answer.log(&mut chain);
+        }
+        let row = |answer| printer.row(answer, &machine);
+        let rows: Vec<_> = pool.install(|| answers.par_iter().map(row).collect());
         progress.pause(|| {
             for complaint in rows.iter().filter_map(|row| row.complaint.as_ref()) {
                 complain(complaint);
             }
+            for missing in answers.iter().filter_map(Answer::missing_proof) {
+                complain(&missing);
+            }
         });
+        unproved |= answers.iter().any(|answer| answer.missing_proof().is_some());
         rows.iter().for_each(|row| tally.add(row.word));
         match printer.write(&rows) {
-            Err(error) if error.kind() == io::ErrorKind::BrokenPipe => return Ok(tally),
+            Err(error) if error.kind() == io::ErrorKind::BrokenPipe => return Ok(tally.status()),
             written => written.map_err(Failure::Output)?,
         }
         progress.advance(lines.bytes(), tally.total());
     }
     progress.finish();
-    match printer.end(&tally) {
+    let seal = screening.then(|| chain.seal(0));
+    match printer.end(&tally, seal) {
         Err(error) if error.kind() != io::ErrorKind::BrokenPipe => Err(Failure::Output(error)),
-        _ => Ok(tally),
+        // Proofs were asked for and one could not be written.
+        _ if unproved => Ok(Status::Fault),
+        _ => Ok(tally.status()),
     }
 }
 
-/// The machine in `path` and the file's name for messages.
-fn read_machine(path: &Path) -> Result<(Machine, String), Failure> {
+/// Worker threads, `count` of them or one a processor.
+fn worker_threads(
+    count: Option<NonZeroUsize>,
+) -> Result<rayon::ThreadPool, rayon::ThreadPoolBuildError> {
+    rayon::ThreadPoolBuilder::new()
+        .num_threads(count.map_or(0, NonZeroUsize::get))
+        .stack_size(STACK_BYTES)
+        .build()
+}
+
+/// A machine that was read.
+struct MachineFile {
+    machine: Machine,
+    /// The file's name for messages.
+    file: String,
+    text: String,
+}
+
+/// The machine in `path`.
+fn read_machine(path: &Path) -> Result<MachineFile, Failure> {
     let file = name_of(path);
     let mut bytes = Vec::new();
     let most = read::MAX_MACHINE_BYTES as u64 + 1;
     match open(path).and_then(|(source, _)| source.take(most).read_to_end(&mut bytes)) {
         Err(source) => Err(Failure::Input { file, source }),
-        Ok(_) => Ok((read::machine(&bytes, &file)?, file)),
+        Ok(_) => Ok(MachineFile {
+            machine: read::machine(&bytes, &file)?,
+            file,
+            text: String::from_utf8_lossy(&bytes).into_owned(),
+        }),
     }
 }
 

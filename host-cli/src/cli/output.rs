@@ -6,6 +6,7 @@ use std::time::Instant;
 
 use anstream::AutoStream;
 use anstyle::Style;
+use balk_core::record::Seal;
 use serde::{Serialize, Serializer};
 
 use crate::kinematics::joint_values;
@@ -19,7 +20,7 @@ use super::tally::{Tally, Word};
 use crate::search::Screening;
 
 /// Version of the JSON rows; rises when a field changes its meaning.
-const SCHEMA: u32 = 1;
+pub(super) const SCHEMA: u32 = 1;
 /// Columns of a person's row.
 const WORD_WIDTH: usize = 11;
 const ID_WIDTH: usize = 20;
@@ -85,13 +86,21 @@ impl Printer {
             );
         }
         text.extend(rows.iter().map(|row| row.text.as_str()));
-        self.print(&text)
+        print(&text, self.json)
     }
 
-    /// Writes what follows the last row.
-    pub fn end(&self, tally: &Tally) -> io::Result<()> {
-        if self.json || self.quiet {
-            return Ok(());
+    /// Writes what follows the last row; the seal of the log, if the rows are one.
+    pub fn end(&self, tally: &Tally, seal: Option<Seal>) -> io::Result<()> {
+        match seal {
+            Some(seal) if self.json => {
+                let seal = hex(&seal.bytes());
+                return print(
+                    &format!("{{\"schema\":{SCHEMA},\"seal\":\"{seal}\"}}\n"),
+                    true,
+                );
+            }
+            _ if self.json || self.quiet => return Ok(()),
+            _ => {}
         }
         let counts: Vec<String> = tally
             .said()
@@ -107,25 +116,30 @@ impl Printer {
             .collect();
         let colon = if counts.is_empty() { "" } else { ": " };
         let seconds = self.start.elapsed().as_secs_f64();
-        self.print(&format!(
-            "\n{} targets in {seconds:.2} s{colon}{}\n\n{CAUTION}\n",
-            tally.total(),
-            counts.join(", ")
-        ))
+        print(
+            &format!(
+                "\n{} targets in {seconds:.2} s{colon}{}\n\n{CAUTION}\n",
+                tally.total(),
+                counts.join(", ")
+            ),
+            false,
+        )
     }
+}
 
-    fn print(&self, text: &str) -> io::Result<()> {
-        if self.json {
-            let mut output = io::stdout().lock();
-            output
-                .write_all(text.as_bytes())
-                .and_then(|()| output.flush())
-        } else {
-            let mut output = AutoStream::auto(io::stdout().lock());
-            output
-                .write_all(text.as_bytes())
-                .and_then(|()| output.flush())
-        }
+/// Writes `text` to standard output at once; unless it is `plain`, with colours where they are
+/// wanted.
+pub(super) fn print(text: &str, plain: bool) -> io::Result<()> {
+    let all = |output: &mut dyn Write| {
+        output
+            .write_all(text.as_bytes())
+            .and_then(|()| output.flush())
+    };
+    let output = io::stdout().lock();
+    if plain {
+        all(&mut { output })
+    } else {
+        all(&mut AutoStream::auto(output))
     }
 }
 
@@ -140,6 +154,8 @@ struct Record<'a> {
     joints: Option<Joints<'a>>,
     #[serde(skip_serializing_if = "Option::is_none")]
     proof: Option<String>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    proof_file: Option<String>,
     #[serde(skip_serializing_if = "Option::is_none")]
     splits: Option<u16>,
     #[serde(skip_serializing_if = "Option::is_none")]
@@ -166,6 +182,7 @@ impl<'a> Record<'a> {
             word: Word::Error,
             joints: None,
             proof: None,
+            proof_file: None,
             splits: None,
             record: None,
             nodes: None,
@@ -183,11 +200,15 @@ impl<'a> Record<'a> {
                 reason: Some(&defect.reason),
                 ..empty
             },
-            Outcome::Decided(Decision {
-                verdict,
-                nodes,
-                seconds,
-            }) => {
+            Outcome::Decided {
+                decision:
+                    Decision {
+                        verdict,
+                        nodes,
+                        seconds,
+                    },
+                proof: file,
+            } => {
                 let decided = Record {
                     nodes: Some(*nodes),
                     seconds: Some(*seconds),
@@ -205,6 +226,14 @@ impl<'a> Record<'a> {
                     Verdict::Unreachable { proof } => Record {
                         word: Word::Unreachable,
                         proof: Some(hex(proof)),
+                        proof_file: match file {
+                            Some(Ok(path)) => Some(path.display().to_string()),
+                            _ => None,
+                        },
+                        reason: match file {
+                            Some(Err(reason)) => Some(reason),
+                            _ => None,
+                        },
                         ..decided
                     },
                     Verdict::Undecided { reason } => Record {
@@ -309,7 +338,7 @@ impl Serialize for Joints<'_> {
 }
 
 /// Bytes as lower-case hexadecimal digits.
-fn hex(bytes: &[u8]) -> String {
+pub(super) fn hex(bytes: &[u8]) -> String {
     bytes
         .iter()
         .fold(String::with_capacity(2 * bytes.len()), |mut text, byte| {

@@ -12,11 +12,14 @@ const PATIENCE: Duration = Duration::from_secs(1);
 pub(super) struct Progress {
     bar: Option<ProgressBar>,
     start: Instant,
+    /// What is being counted.
+    noun: &'static str,
 }
 
 impl Progress {
-    /// Progress through `size` bytes, if that is known; `silent`: never show any.
-    pub fn new(size: Option<u64>, silent: bool) -> Self {
+    /// Progress through `size` bytes, if that is known, and through things called `noun`; `silent`:
+    /// never show any.
+    pub fn new(size: Option<u64>, noun: &'static str, silent: bool) -> Self {
         let bar = (!silent && stderr().is_terminal()).then(|| {
             let (length, template) = match size {
                 Some(_) => (size, "{bar:40} {percent} %  {msg}, {eta} left"),
@@ -28,17 +31,18 @@ impl Progress {
         Progress {
             bar,
             start: Instant::now(),
+            noun,
         }
     }
 
-    /// Shows that `bytes` of the input and `targets` are done.
-    pub fn advance(&mut self, bytes: u64, targets: u64) {
+    /// Shows that `bytes` of the input and `count` of what is counted are done.
+    pub fn advance(&mut self, bytes: u64, count: u64) {
         let Some(bar) = &self.bar else { return };
         if bar.is_hidden() && self.start.elapsed() > PATIENCE {
             bar.set_draw_target(ProgressDrawTarget::stderr());
         }
         bar.set_position(bytes);
-        bar.set_message(format!("{targets} targets"));
+        bar.set_message(format!("{count} {}", self.noun));
     }
 
     /// Runs `speak`, which may write to standard error, with the bar out of the way.

@@ -6,13 +6,13 @@ use anstyle::{AnsiColor, Style};
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 #[repr(u8)]
 pub enum Status {
-    /// Answered, and nothing unreachable, refused, invalid or undecided.
+    /// Answered, and nothing unreachable, refused, invalid or undecided; a log without defects.
     Clear = 0,
-    /// At least one target unreachable or refused.
+    /// At least one target unreachable or refused, or a log with an invalid or missing record.
     Negative = 1,
     /// Wrong usage.
     Usage = 2,
-    /// Nothing unreachable or refused, at least one undecided.
+    /// Nothing of that, but at least one target undecided, or a log that is not sealed.
     Undecided = 3,
     /// An input could not be read or had errors.
     Input = 4,
