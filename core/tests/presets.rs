@@ -6,12 +6,7 @@ use balk_core::screen::{Workspace4, Workspace6, Workspace7, Workspace8};
 #[test]
 fn presets_take_no_more_than_stated() {
     let sizes = [
-        (
-            size_of::<Workspace4>(),
-            9_864,
-            size_of::<Machine<4>>(),
-            800,
-        ),
+        (size_of::<Workspace4>(), 9_864, size_of::<Machine<4>>(), 800),
         (
             size_of::<Workspace6>(),
             14_792,

@@ -104,9 +104,8 @@ fn unpacked(id: String, target: &packed::Target, scale: f64) -> Target {
                 cones
                     .iter()
                     .map(|cone| {
-                        let direction = |v: [i32; 3]| {
-                            Unit::new_normalize(Vector3::from_fn(|k, _| unit(v[k])))
-                        };
+                        let direction =
+                            |v: [i32; 3]| Unit::new_normalize(Vector3::from_fn(|k, _| unit(v[k])));
                         Cone {
                             tip: direction(cone.tip),
                             base: direction(cone.base),

@@ -151,7 +151,7 @@ fn people_get_rows_a_summary_and_the_caution() {
     let run = folder.run(&["audit", "log", "--machine", "m.toml"]);
     for part in [
         "answer        place         details\n",
-        "proved      line 1        number 0: tip gripper\n",
+        "proved        line 1        number 0: tip gripper\n",
         "missing       line 3        1 record after number 1\n",
         " proved, 1 missing\n",
         "not a safety function",

@@ -11,6 +11,7 @@ pub mod measure {
     pub mod base_frame;
     pub mod containment;
     pub mod families;
+    pub mod forgeries;
     pub mod kernel;
     pub mod lifted;
     pub mod proofs;

@@ -59,6 +59,21 @@ enum Command {
         #[arg(long, default_value_t = 7)]
         seed: u64,
     },
+    /// Forged proofs: what the checker says of proofs that were tampered with
+    Forgeries {
+        /// Proofs
+        #[arg(long, default_value_t = 200)]
+        proofs: usize,
+        /// Of those, how many have every bit flipped with the digest made right again
+        #[arg(long, default_value_t = 20)]
+        flipped: usize,
+        /// Changes of one field
+        #[arg(long, default_value_t = 100_000)]
+        edits: u64,
+        /// Seed of targets and changes
+        #[arg(long, default_value_t = 3)]
+        seed: u64,
+    },
     /// The certificate kernel against plain reasoning on every small system
     Kernel,
     /// Lifted envelope and hull rows: what they would add (hours with large numbers)
@@ -91,6 +106,21 @@ enum Command {
         #[arg(long, default_value_t = 2000)]
         parts: u64,
         /// Seed of the targets
+        #[arg(long, default_value_t = 7)]
+        seed: u64,
+    },
+    /// Damage to logs of refusals, and the size of a record
+    Records {
+        /// Records of the damaged log
+        #[arg(long, default_value_t = 12)]
+        records: usize,
+        /// Flip every two bits of the log, not only those of one frame (minutes)
+        #[arg(long)]
+        all_pairs: bool,
+        /// Targets per arm and kind for the sizes
+        #[arg(long, default_value_t = 1000)]
+        targets: usize,
+        /// Seed of damages and targets
         #[arg(long, default_value_t = 7)]
         seed: u64,
     },
@@ -145,6 +175,12 @@ fn main() {
             nodes,
             seed,
         }),
+        Command::Forgeries {
+            proofs,
+            flipped,
+            edits,
+            seed,
+        } => measure::forgeries::run(proofs, flipped, edits, seed),
         Command::Kernel => measure::kernel::run(),
         Command::Lifted {
             roots,
@@ -162,6 +198,16 @@ fn main() {
             parts,
             seed,
         } => measure::proofs::run(&kinds, targets, nodes, parts, seed),
+        Command::Records {
+            records,
+            all_pairs,
+            targets,
+            seed,
+        } => {
+            measure::records::print_damage(records, all_pairs, seed);
+            println!();
+            measure::records::print_sizes(targets, seed);
+        }
         Command::Soundness {
             machines,
             targets,

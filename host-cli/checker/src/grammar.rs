@@ -131,6 +131,17 @@ pub fn rule(number: u8, from: &mut impl Reader) -> Result<Rule, Malformed> {
     })
 }
 
+/// Whether both forms can hold `text` as a target: one JSON object in one line, nothing around it.
+pub fn need_target(text: &str) -> Result<(), Malformed> {
+    let one = text.starts_with('{') && text.trim() == text && !text.contains(['\n', '\r']);
+    let json = || serde_json::from_str::<&serde_json::value::RawValue>(text).is_ok();
+    if one && json() {
+        Ok(())
+    } else {
+        Err(Malformed::Text)
+    }
+}
+
 /// The number of `first + axis`, if there are that many axes.
 fn nth(first: u8, axis: u8, axes: u8) -> Result<u8, Malformed> {
     if axis < axes {

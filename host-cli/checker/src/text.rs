@@ -29,9 +29,7 @@ pub struct TextError {
 ///
 /// What the format cannot hold, such as a target with a line break or an axis beyond the third.
 pub fn write(proof: &Proof) -> Result<String, Malformed> {
-    if proof.target.contains(['\n', '\r']) {
-        return Err(Malformed::Text);
-    }
+    grammar::need_target(&proof.target)?;
     let mut lines = vec![
         TITLE.to_owned(),
         format!("machine {}", hex(&proof.machine)),
@@ -193,6 +191,7 @@ fn read_lines(lines: &mut Lines) -> Result<Proof, Malformed> {
     let machine = parse_digest(lines.after("machine")?)?;
     let tip = serde_json::from_str(lines.after("tip")?).map_err(|_| Malformed::Text)?;
     let target = lines.after("target")?.to_owned();
+    grammar::need_target(&target)?;
     let search = parse_digest(lines.after("search")?)?;
     let (mut frames, mut root, mut items) = (Vec::new(), Vec::new(), Vec::new());
     loop {

@@ -39,7 +39,10 @@ impl Answer {
             Outcome::Decided {
                 proof: Some(Err(reason)),
                 ..
-            } => Some(format!("{}: no proof written: {reason}", read::printable(&self.id))),
+            } => Some(format!(
+                "{}: no proof written: {reason}",
+                read::printable(&self.id)
+            )),
             _ => None,
         }
     }
@@ -62,7 +65,10 @@ pub(super) enum Outcome {
         /// Where the proof is, or why there is none; none when none is wanted.
         proof: Option<Result<PathBuf, String>>,
     },
-    Screened { splits: u16, screening: Screening },
+    Screened {
+        splits: u16,
+        screening: Screening,
+    },
     Wrong(Defect),
 }
 
@@ -152,7 +158,10 @@ impl<'a> Solvers<'a> {
             .map_err(|error| error.to_string())?;
         let written = |error| format!("{error}");
         let (bytes, ending) = if proofs.text {
-            (text::write(&proof).map_err(written)?.into_bytes(), "proof.txt")
+            (
+                text::write(&proof).map_err(written)?.into_bytes(),
+                "proof.txt",
+            )
         } else {
             (binary::write(&proof).map_err(written)?, "proof")
         };

@@ -164,10 +164,18 @@ fn row(inputs: &CheckInputs, path: &Path, id: &str, answer: &Answer) -> String {
         return format!("{row}\n");
     }
     let style: Style = colour.on_default();
-    let mut line = format!("{style}{word:7}{style:#}  {}", printable(&path.display().to_string()));
+    let mut line = format!(
+        "{style}{word:7}{style:#}  {}",
+        printable(&path.display().to_string())
+    );
     let _ = match answer {
         Answer::Valid { steps, splits } => {
-            write!(line, "  {}; {steps} steps, {} parts", printable(id), splits + 1)
+            write!(
+                line,
+                "  {}; {steps} steps, {} parts",
+                printable(id),
+                splits + 1
+            )
         }
         Answer::Invalid(reason) | Answer::Error(reason) => write!(line, "  {reason}"),
     };

@@ -123,7 +123,11 @@ fn answer_all(inputs: &Inputs, task: Task) -> Result<Status, Failure> {
         threads,
         quiet,
     } = inputs;
-    let MachineFile { machine, file, text } = read_machine(machine)?;
+    let MachineFile {
+        machine,
+        file,
+        text,
+    } = read_machine(machine)?;
     let screening = matches!(task, Task::Screen { .. });
     if let Task::Decide {
         proofs: Some(Proofs { folder, .. }),
@@ -135,8 +139,8 @@ fn answer_all(inputs: &Inputs, task: Task) -> Result<Status, Failure> {
             source,
         })?;
     }
-    let solvers = Solvers::new(&machine, &text, task)
-        .map_err(|source| Failure::Machine { file, source })?;
+    let solvers =
+        Solvers::new(&machine, &text, task).map_err(|source| Failure::Machine { file, source })?;
     let targets_file = name_of(targets);
     let input_failure = |source| Failure::Input {
         file: targets_file.clone(),
@@ -171,7 +175,9 @@ fn answer_all(inputs: &Inputs, task: Task) -> Result<Status, Failure> {
                 complain(&missing);
             }
         });
-        unproved |= answers.iter().any(|answer| answer.missing_proof().is_some());
+        unproved |= answers
+            .iter()
+            .any(|answer| answer.missing_proof().is_some());
         rows.iter().for_each(|row| tally.add(row.word));
         match printer.write(&rows) {
             Err(error) if error.kind() == io::ErrorKind::BrokenPipe => return Ok(tally.status()),

@@ -37,7 +37,10 @@ impl Network<'_> {
             Constraint::Equation(equation) => {
                 let mut count = 0;
                 for (k, term) in equation.terms.iter().enumerate() {
-                    for x in [Some(term.a), term.b.filter(|b| *b != term.a)].into_iter().flatten() {
+                    for x in [Some(term.a), term.b.filter(|b| *b != term.a)]
+                        .into_iter()
+                        .flatten()
+                    {
                         count += 1;
                         if let Some(allowed) = equation.solve(k, x, known)
                             && !found(known, x, allowed)
@@ -53,9 +56,17 @@ impl Network<'_> {
     }
 
     /// The set one constraint allows of one quantity, if it says anything.
-    pub(super) fn allowed(&self, constraint: &Constraint, x: usize, known: &mut [Interval]) -> Option<Interval> {
+    pub(super) fn allowed(
+        &self,
+        constraint: &Constraint,
+        x: usize,
+        known: &mut [Interval],
+    ) -> Option<Interval> {
         if let Constraint::Equation(equation) = constraint {
-            let k = equation.terms.iter().position(|t| t.a == x || t.b == Some(x))?;
+            let k = equation
+                .terms
+                .iter()
+                .position(|t| t.a == x || t.b == Some(x))?;
             return equation.solve(k, x, known);
         }
         let mut result = None;
@@ -99,7 +110,9 @@ impl Network<'_> {
                     let (x, y) = (view(f, place, Part::X), view(f, place, Part::Y));
                     directions(known[x], known[y])
                 };
-                if let (Some(to), Some(from)) = (plane(Place::Before(number)), plane(Place::After(number))) {
+                if let (Some(to), Some(from)) =
+                    (plane(Place::Before(number)), plane(Place::After(number)))
+                {
                     let allowed = turned_into(to.minus(from), known[self.values[i]]);
                     found(known, self.values[i], allowed);
                 }
@@ -111,15 +124,23 @@ impl Network<'_> {
                 let value = known[self.values[i]];
                 for (from, to, turn) in [
                     (Place::After(number), Place::Before(number), value),
-                    (Place::Before(number), Place::After(number), value.scale(-1.0)),
+                    (
+                        Place::Before(number),
+                        Place::After(number),
+                        value.scale(-1.0),
+                    ),
                 ] {
                     let (x, y) = (view(f, from, Part::X), view(f, from, Part::Y));
-                    let Some(arc) = directions(known[x], known[y]) else { continue };
+                    let Some(arc) = directions(known[x], known[y]) else {
+                        continue;
+                    };
                     let arc = arc.plus(turn).widened(4e-15);
                     if arc.width() >= std::f64::consts::TAU {
                         continue;
                     }
-                    let slack = 4e-15 * reach.hi.max(1.0) + 1e-14 + if reach.lo < 1e-6 { 1e-8 } else { 0.0 };
+                    let slack = 4e-15 * reach.hi.max(1.0)
+                        + 1e-14
+                        + if reach.lo < 1e-6 { 1e-8 } else { 0.0 };
                     for (part, range) in [(Part::X, arc.cosine()), (Part::Y, arc.sine())] {
                         let allowed = reach.times(range).widened(slack);
                         if !found(known, view(f, to, part), allowed) {
@@ -130,7 +151,9 @@ impl Network<'_> {
             }
             Special::Spread(f) => self.spread(f, known, found),
             Special::SpreadCone(k, f) => {
-                let Wanted::Cones(cones) = &self.wanted else { return };
+                let Wanted::Cones(cones) = &self.wanted else {
+                    return;
+                };
                 let within = cones[k].2;
                 let number = k as u8 + 1;
                 let (along, aim) = (at(Quantity::Along(f, number)), at(Quantity::Aim(f, number)));
@@ -143,7 +166,9 @@ impl Network<'_> {
                 found(known, aim, allowed);
             }
             Special::Tilt(k) => {
-                let Wanted::Cones(cones) = &self.wanted else { return };
+                let Wanted::Cones(cones) = &self.wanted else {
+                    return;
+                };
                 let (_, base, within) = cones[k];
                 for (j, part) in AXES.into_iter().enumerate() {
                     let axis = view(Feature::Cone(k as u8 + 1), Place::Base, part);
@@ -162,13 +187,17 @@ impl Network<'_> {
         known: &mut [Interval],
         found: &mut impl FnMut(&mut [Interval], usize, Interval) -> bool,
     ) {
-        let Wanted::Near { columns, within } = &self.wanted else { return };
+        let Wanted::Near { columns, within } = &self.wanted else {
+            return;
+        };
         let views = |place| AXES.map(|part| self.at(Quantity::View(f, place, part)));
         let (difference, end) = (views(Place::Difference), views(Place::End));
         let square = |place| self.at(Quantity::View(f, place, Part::Square));
         let (difference_square, end_square) = (square(Place::Difference), square(Place::End));
         let dot = |row: [f64; 3], at: [usize; 3], known: &[Interval]| {
-            (0..3).fold(Interval::point(0.0), |sum, k| sum.plus(known[at[k]].scale(row[k])))
+            (0..3).fold(Interval::point(0.0), |sum, k| {
+                sum.plus(known[at[k]].scale(row[k]))
+            })
         };
         for m in 0..3 {
             let column = [0, 1, 2].map(|k| columns[(k, m)]);

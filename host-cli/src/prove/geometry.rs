@@ -52,8 +52,9 @@ fn onto(axis: &Vector3<f64>) -> [i64; 4] {
     if let Some((_, exact)) = table.iter().find(|(v, _)| along(*v)) {
         return *exact;
     }
-    let turn = UnitQuaternion::rotation_between(&Vector3::z(), axis)
-        .unwrap_or_else(|| UnitQuaternion::from_axis_angle(&Vector3::x_axis(), std::f64::consts::PI));
+    let turn = UnitQuaternion::rotation_between(&Vector3::z(), axis).unwrap_or_else(|| {
+        UnitQuaternion::from_axis_angle(&Vector3::x_axis(), std::f64::consts::PI)
+    });
     [turn.w, turn.i, turn.j, turn.k].map(|c| (c * (1u64 << 40) as f64).round() as i64)
 }
 
@@ -141,7 +142,10 @@ impl Chain {
         let links: Vec<Link> = (0..stretches.len())
             .map(|l| link(&stretches[l], &placements, &frames, l))
             .collect();
-        let length = links.iter().map(|link| link.origin.norm() + link.shift).sum();
+        let length = links
+            .iter()
+            .map(|link| link.origin.norm() + link.shift)
+            .sum();
         Chain {
             joints,
             links,
@@ -180,7 +184,11 @@ fn choose(
             let own = stretches[k].placement * placed(&frames[k]);
             own.rotation.inverse() * own.translation.vector
         };
-        let from = if seen.xy().norm() > 1e-9 { seen } else { back() };
+        let from = if seen.xy().norm() > 1e-9 {
+            seen
+        } else {
+            back()
+        };
         if from.xy().norm() > 1e-9 {
             frames[k].turn = product(frames[k].turn, about_axis(from.y.atan2(from.x)));
         }
@@ -191,7 +199,13 @@ fn choose(
 
 fn link(stretch: &Stretch, placements: &[Isometry3<f64>], frames: &[Frame], l: usize) -> Link {
     // How far a written frame's third axis may be off: nothing where the integers are exact.
-    let off = |k: usize| if frames[k].turn.iter().any(|c| c.abs() > 1 << 30) { 4e-12 } else { 0.0 };
+    let off = |k: usize| {
+        if frames[k].turn.iter().any(|c| c.abs() > 1 << 30) {
+            4e-12
+        } else {
+            0.0
+        }
+    };
     let before = l.checked_sub(1);
     let after = (l < placements.len()).then_some(l);
     let own = before.map_or_else(Isometry3::identity, |k| placements[k].inverse());

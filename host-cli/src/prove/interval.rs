@@ -53,7 +53,11 @@ impl Interval {
 
     pub fn square(self) -> Interval {
         let (a, b) = (self.lo * self.lo, self.hi * self.hi);
-        let lo = if self.lo <= 0.0 && self.hi >= 0.0 { 0.0 } else { a.min(b) };
+        let lo = if self.lo <= 0.0 && self.hi >= 0.0 {
+            0.0
+        } else {
+            a.min(b)
+        };
         Interval::new(lo, a.max(b))
     }
 
@@ -98,7 +102,11 @@ pub(crate) fn directions(x: Interval, y: Interval) -> Option<Interval> {
         let lo = angle(a.0, a.1);
         let width = (angle(b.0, b.1) - lo).rem_euclid(std::f64::consts::TAU);
         // The same corner twice may come out just below itself.
-        let width = if width > std::f64::consts::PI { 0.0 } else { width };
+        let width = if width > std::f64::consts::PI {
+            0.0
+        } else {
+            width
+        };
         Some(Interval::new(lo, lo + width))
     };
     // Too near to zero to tell a direction.

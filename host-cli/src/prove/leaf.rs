@@ -107,8 +107,10 @@ impl Network<'_> {
         let most = log.len() + MOST_STEPS;
         for (pass, worth) in WORTH.into_iter().enumerate() {
             let due: Vec<u32> = if pass == 0 && !changed.is_empty() {
-                let mut due: Vec<u32> =
-                    changed.iter().flat_map(|&x| self.readers[x].iter().copied()).collect();
+                let mut due: Vec<u32> = changed
+                    .iter()
+                    .flat_map(|&x| self.readers[x].iter().copied())
+                    .collect();
                 due.sort_unstable();
                 due.dedup();
                 due
@@ -124,38 +126,42 @@ impl Network<'_> {
                 queued[number as usize] = false;
                 let mut empty = false;
                 let mut wake = Vec::new();
-                self.narrow(&self.constraints[number as usize], known, &mut |known, x, allowed| {
-                    let own = known[x];
-                    let mut entry = Narrowing {
-                        constraint: number,
-                        quantity: x as u32,
-                        lo: false,
-                        hi: false,
-                    };
-                    if excludes(own, allowed) {
-                        log.push(entry);
-                        empty = true;
-                        return false;
-                    }
-                    let (lo, hi) = outward(allowed);
-                    let least = (worth * own.width()).max(LEAST);
-                    if let Some(lo) = lo.map(double).filter(|lo| lo - own.lo > least) {
-                        entry.lo = true;
-                        known[x].lo = lo;
-                    }
-                    if let Some(hi) = hi.map(double).filter(|hi| own.hi - hi > least) {
-                        entry.hi = true;
-                        known[x].hi = hi;
-                    }
-                    if entry.lo || entry.hi {
-                        log.push(entry);
-                        wake.push(x);
-                        if let Some(v) = self.variable_of(x) {
-                            self.share(known, v, Some(&mut |value| wake.push(value)));
+                self.narrow(
+                    &self.constraints[number as usize],
+                    known,
+                    &mut |known, x, allowed| {
+                        let own = known[x];
+                        let mut entry = Narrowing {
+                            constraint: number,
+                            quantity: x as u32,
+                            lo: false,
+                            hi: false,
+                        };
+                        if excludes(own, allowed) {
+                            log.push(entry);
+                            empty = true;
+                            return false;
                         }
-                    }
-                    true
-                });
+                        let (lo, hi) = outward(allowed);
+                        let least = (worth * own.width()).max(LEAST);
+                        if let Some(lo) = lo.map(double).filter(|lo| lo - own.lo > least) {
+                            entry.lo = true;
+                            known[x].lo = lo;
+                        }
+                        if let Some(hi) = hi.map(double).filter(|hi| own.hi - hi > least) {
+                            entry.hi = true;
+                            known[x].hi = hi;
+                        }
+                        if entry.lo || entry.hi {
+                            log.push(entry);
+                            wake.push(x);
+                            if let Some(v) = self.variable_of(x) {
+                                self.share(known, v, Some(&mut |value| wake.push(value)));
+                            }
+                        }
+                        true
+                    },
+                );
                 if empty {
                     return true;
                 }
@@ -287,7 +293,10 @@ impl Network<'_> {
             }
             return;
         };
-        let own = equation.terms.iter().find(|term| term.a == x || term.b == Some(x));
+        let own = equation
+            .terms
+            .iter()
+            .find(|term| term.a == x || term.b == Some(x));
         let linear = own.filter(|term| term.b.is_none());
         for term in &equation.terms {
             match (linear, term.b) {
@@ -336,9 +345,13 @@ impl Network<'_> {
                 claim,
             });
         });
-        if written.last().is_none_or(|step| step.claim != Claim::Nothing) {
+        if written
+            .last()
+            .is_none_or(|step| step.claim != Claim::Nothing)
+        {
             let multiplied = |&(multiplier, number): &(i64, u32)| {
-                self.relation_of(number).map(|relation| (multiplier, relation))
+                self.relation_of(number)
+                    .map(|relation| (multiplier, relation))
             };
             written.push(Step {
                 rule: Rule::Sum(sum.into_iter().flatten().filter_map(multiplied).collect()),
@@ -384,7 +397,8 @@ impl Network<'_> {
                 self.share(&mut known, v, None);
             }
         }
-        sum.is_some_and(|sum| self.contradicts(sum, &known)).then_some(steps.len())
+        sum.is_some_and(|sum| self.contradicts(sum, &known))
+            .then_some(steps.len())
     }
 
     fn rule(&self, constraint: &Constraint) -> Rule {

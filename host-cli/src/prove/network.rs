@@ -92,7 +92,9 @@ impl<'a> Network<'a> {
             .filter(|joint| !joint.revolute)
             .map(|joint| {
                 let span = spans[joint.variable];
-                span.scale(joint.ratio).plus(Interval::point(joint.offset)).magnitude()
+                span.scale(joint.ratio)
+                    .plus(Interval::point(joint.offset))
+                    .magnitude()
             })
             .sum();
         let mut network = Network {
@@ -231,7 +233,10 @@ impl<'a> Network<'a> {
         for (k, part) in AXES.into_iter().enumerate() {
             let (centre, within) = (target.xyz[k], target.xyz_within[k]);
             let wide = Interval::new(centre - within, centre + within);
-            self.fix(Quantity::View(Feature::Tip, Place::Base, part), wide.widened(1e-15));
+            self.fix(
+                Quantity::View(Feature::Tip, Place::Base, part),
+                wide.widened(1e-15),
+            );
         }
         let mut features = vec![Feature::Tip];
         if closed {
@@ -254,7 +259,11 @@ impl<'a> Network<'a> {
                     [(1.0, one, None), (-1.0, two, None)]
                 };
                 let zero = Interval::point(0.0);
-                self.equation(Relation::PairSquare(i, j), zero, pair(Feature::Origin, Part::Square));
+                self.equation(
+                    Relation::PairSquare(i, j),
+                    zero,
+                    pair(Feature::Origin, Part::Square),
+                );
                 if closed {
                     self.equation(Relation::PairAxis(i, j), zero, pair(Feature::Axis, Part::Z));
                 }
@@ -294,7 +303,9 @@ impl<'a> Network<'a> {
                 self.fix_view(feature, Place::End, unit, true);
             }
             Feature::Cone(k) => {
-                let Wanted::Cones(cones) = &self.wanted else { return };
+                let Wanted::Cones(cones) = &self.wanted else {
+                    return;
+                };
                 let axis = cones[k as usize - 1].0;
                 self.fix_view(feature, Place::End, axis, false);
             }
@@ -341,14 +352,25 @@ impl<'a> Network<'a> {
         let link = &self.chain.links[l as usize];
         let count = self.chain.joints.len() as u8;
         let first = if l == 0 { Place::Base } else { Place::After(l) };
-        let second = if l == count { Place::End } else { Place::Before(l + 1) };
+        let second = if l == count {
+            Place::End
+        } else {
+            Place::Before(l + 1)
+        };
         let (v, w) = (
             |part| Quantity::View(f, first, part),
             |part| Quantity::View(f, second, part),
         );
         let point = is_point(f);
-        let (origin, rotation) = (if point { link.origin } else { Vector3::zeros() }, *link.rotation.matrix());
-        let slack = if point { link.shift + link.turn * self.reach } else { link.turn };
+        let (origin, rotation) = (
+            if point { link.origin } else { Vector3::zeros() },
+            *link.rotation.matrix(),
+        );
+        let slack = if point {
+            link.shift + link.turn * self.reach
+        } else {
+            link.turn
+        };
         let back = rotation.transpose() * origin;
         let (turn, shift, reach) = (link.turn, link.shift, self.reach);
         for (k, part) in AXES.into_iter().enumerate() {
@@ -358,12 +380,16 @@ impl<'a> Network<'a> {
             self.equation(
                 Relation::Out(k as u8, l, f),
                 Interval::new(origin[k] - slack, origin[k] + slack),
-                others(rotation, &w).into_iter().chain([(1.0, v(part), None)]),
+                others(rotation, &w)
+                    .into_iter()
+                    .chain([(1.0, v(part), None)]),
             );
             self.equation(
                 Relation::In(k as u8, l, f),
                 Interval::new(-back[k] - slack, -back[k] + slack),
-                others(rotation.transpose(), &v).into_iter().chain([(1.0, w(part), None)]),
+                others(rotation.transpose(), &v)
+                    .into_iter()
+                    .chain([(1.0, w(part), None)]),
             );
         }
         if !point {
@@ -382,12 +408,16 @@ impl<'a> Network<'a> {
         self.equation(
             Relation::Far(l, f),
             Interval::new(square - far, square + far),
-            squares(1.0).into_iter().chain([0, 1, 2].map(|k| (-2.0 * back[k], w(AXES[k]), None))),
+            squares(1.0)
+                .into_iter()
+                .chain([0, 1, 2].map(|k| (-2.0 * back[k], w(AXES[k]), None))),
         );
         self.equation(
             Relation::Near(l, f),
             Interval::new(square - near, square + near),
-            squares(-1.0).into_iter().chain([0, 1, 2].map(|k| (2.0 * origin[k], v(AXES[k]), None))),
+            squares(-1.0)
+                .into_iter()
+                .chain([0, 1, 2].map(|k| (2.0 * origin[k], v(AXES[k]), None))),
         );
     }
 }

@@ -27,7 +27,9 @@ impl Joint {
         if self.ratio == 1.0 && self.offset == 0.0 {
             return Some(value);
         }
-        let own = value.minus(Interval::point(self.offset)).over(Interval::point(self.ratio))?;
+        let own = value
+            .minus(Interval::point(self.offset))
+            .over(Interval::point(self.ratio))?;
         Some(own.widened(1e-15 * own.magnitude().max(1.0)))
     }
 }
@@ -38,53 +40,103 @@ impl Network<'_> {
         let w = |k: usize| Quantity::View(f, Place::Before(i), AXES[k]);
         let v = |k: usize| Quantity::View(f, Place::After(i), AXES[k]);
         let square = |place| Quantity::View(f, place, Part::Square);
-        let (c, s, r) = (Quantity::Cosine(i), Quantity::Sine(i), Quantity::Radius(f, i));
+        let (c, s, r) = (
+            Quantity::Cosine(i),
+            Quantity::Sine(i),
+            Quantity::Radius(f, i),
+        );
         let mut add = |relation, terms: &[(f64, Quantity, Option<Quantity>)]| {
             self.equation(relation, ZERO, terms.iter().copied());
         };
         add(
             Relation::Turn(0, i, f),
-            &[(1.0, w(0), None), (-1.0, c, Some(v(0))), (1.0, s, Some(v(1)))],
+            &[
+                (1.0, w(0), None),
+                (-1.0, c, Some(v(0))),
+                (1.0, s, Some(v(1))),
+            ],
         );
         add(
             Relation::Turn(1, i, f),
-            &[(1.0, w(1), None), (-1.0, s, Some(v(0))), (-1.0, c, Some(v(1)))],
+            &[
+                (1.0, w(1), None),
+                (-1.0, s, Some(v(0))),
+                (-1.0, c, Some(v(1))),
+            ],
         );
-        add(Relation::Turn(2, i, f), &[(1.0, w(2), None), (-1.0, v(2), None)]);
+        add(
+            Relation::Turn(2, i, f),
+            &[(1.0, w(2), None), (-1.0, v(2), None)],
+        );
         add(
             Relation::Back(0, i, f),
-            &[(1.0, v(0), None), (-1.0, c, Some(w(0))), (-1.0, s, Some(w(1)))],
+            &[
+                (1.0, v(0), None),
+                (-1.0, c, Some(w(0))),
+                (-1.0, s, Some(w(1))),
+            ],
         );
         add(
             Relation::Back(1, i, f),
-            &[(1.0, v(1), None), (-1.0, c, Some(w(1))), (1.0, s, Some(w(0)))],
+            &[
+                (1.0, v(1), None),
+                (-1.0, c, Some(w(1))),
+                (1.0, s, Some(w(0))),
+            ],
         );
         let (before, after) = (square(Place::Before(i)), square(Place::After(i)));
-        add(Relation::TurnSquare(i, f), &[(1.0, before, None), (-1.0, after, None)]);
+        add(
+            Relation::TurnSquare(i, f),
+            &[(1.0, before, None), (-1.0, after, None)],
+        );
         let both = |x: Quantity| Some(x);
         add(
             Relation::PlaneBefore(i, f),
-            &[(1.0, r, None), (-1.0, w(0), both(w(0))), (-1.0, w(1), both(w(1)))],
+            &[
+                (1.0, r, None),
+                (-1.0, w(0), both(w(0))),
+                (-1.0, w(1), both(w(1))),
+            ],
         );
         add(
             Relation::PlaneAfter(i, f),
-            &[(1.0, r, None), (-1.0, v(0), both(v(0))), (-1.0, v(1), both(v(1)))],
+            &[
+                (1.0, r, None),
+                (-1.0, v(0), both(v(0))),
+                (-1.0, v(1), both(v(1))),
+            ],
         );
         add(
             Relation::HeightBefore(i, f),
-            &[(1.0, before, None), (-1.0, r, None), (-1.0, w(2), both(w(2)))],
+            &[
+                (1.0, before, None),
+                (-1.0, r, None),
+                (-1.0, w(2), both(w(2))),
+            ],
         );
         add(
             Relation::HeightAfter(i, f),
-            &[(1.0, after, None), (-1.0, r, None), (-1.0, v(2), both(v(2)))],
+            &[
+                (1.0, after, None),
+                (-1.0, r, None),
+                (-1.0, v(2), both(v(2))),
+            ],
         );
         add(
             Relation::Dot(i, f),
-            &[(1.0, c, Some(r)), (-1.0, w(0), Some(v(0))), (-1.0, w(1), Some(v(1)))],
+            &[
+                (1.0, c, Some(r)),
+                (-1.0, w(0), Some(v(0))),
+                (-1.0, w(1), Some(v(1))),
+            ],
         );
         add(
             Relation::Cross(i, f),
-            &[(1.0, s, Some(r)), (-1.0, w(1), Some(v(0))), (1.0, w(0), Some(v(1)))],
+            &[
+                (1.0, s, Some(r)),
+                (-1.0, w(1), Some(v(0))),
+                (1.0, w(0), Some(v(1))),
+            ],
         );
         self.special(Special::Angle(i as usize - 1, f));
         self.special(Special::Sector(i as usize - 1, f));
@@ -116,7 +168,11 @@ impl Network<'_> {
                 (1.0, view(Place::Difference, k), None),
                 (-1.0, view(Place::Base, k), None),
             ];
-            self.equation(Relation::Shift(k as u8, f), ZERO, terms.into_iter().chain(less));
+            self.equation(
+                Relation::Shift(k as u8, f),
+                ZERO,
+                terms.into_iter().chain(less),
+            );
         }
         let square = |place| Quantity::View(f, place, Part::Square);
         let squares = [
@@ -160,7 +216,8 @@ impl Network<'_> {
                 let cones = cones.clone();
                 for (number, (tip, base, _)) in (1..).zip(&cones) {
                     let (along, aim) = (Quantity::Along(f, number), Quantity::Aim(f, number));
-                    let axis = |k: usize| Quantity::View(Feature::Cone(number), Place::Base, AXES[k]);
+                    let axis =
+                        |k: usize| Quantity::View(Feature::Cone(number), Place::Base, AXES[k]);
                     self.equation(
                         Relation::Along(number, f),
                         ZERO,
@@ -209,8 +266,13 @@ impl Network<'_> {
             Wanted::Cones(cones) => {
                 for (number, (_, base, within)) in (1..).zip(cones.clone()) {
                     let least = within.min(std::f64::consts::PI).cos() - 1e-14;
-                    let terms = [0, 1, 2].map(|k| (base[k], component(Feature::Cone(number), k), None));
-                    self.equation(Relation::Cone(number), Interval::new(least, 1.0 + 1e-12), terms);
+                    let terms =
+                        [0, 1, 2].map(|k| (base[k], component(Feature::Cone(number), k), None));
+                    self.equation(
+                        Relation::Cone(number),
+                        Interval::new(least, 1.0 + 1e-12),
+                        terms,
+                    );
                     self.special(Special::Tilt(number as usize - 1));
                 }
             }
@@ -221,7 +283,12 @@ impl Network<'_> {
     pub(super) fn inputs(&self, constraint: &Constraint) -> Vec<usize> {
         let special = match constraint {
             Constraint::Equation(equation) => {
-                return equation.terms.iter().flat_map(|t| [Some(t.a), t.b]).flatten().collect();
+                return equation
+                    .terms
+                    .iter()
+                    .flat_map(|t| [Some(t.a), t.b])
+                    .flatten()
+                    .collect();
             }
             Constraint::Special(special) => *special,
         };
@@ -240,7 +307,10 @@ impl Network<'_> {
             }
             Special::Angle(i, f) => plane(f, i).collect(),
             Special::Sector(i, f) => plane(f, i)
-                .chain([Quantity::Radius(f, i as u8 + 1), Quantity::Value(i as u8 + 1)])
+                .chain([
+                    Quantity::Radius(f, i as u8 + 1),
+                    Quantity::Value(i as u8 + 1),
+                ])
                 .collect(),
             Special::Spread(f) => {
                 let squares = [Place::Difference, Place::End];
@@ -261,6 +331,9 @@ impl Network<'_> {
             Special::Tilt(k) => views(Feature::Cone(k as u8 + 1), Place::Base).to_vec(),
         };
         inputs.sort_unstable();
-        inputs.into_iter().map(|quantity| self.at(quantity)).collect()
+        inputs
+            .into_iter()
+            .map(|quantity| self.at(quantity))
+            .collect()
     }
 }

@@ -96,7 +96,9 @@ impl Network<'_> {
         let mut explained = 0.0;
         let mut slopes: BTreeMap<usize, f64> = BTreeMap::new();
         for &(multiplier, number) in sum {
-            let Some(equation) = self.equation_of(number) else { return false };
+            let Some(equation) = self.equation_of(number) else {
+                return false;
+            };
             let expanded = equation.expanded(known);
             let multiplier = multiplier as f64;
             constant += multiplier * expanded.constant;
@@ -120,7 +122,10 @@ impl Network<'_> {
                 of_tip(equation.relation).then(|| (number, equation.expanded(known)))
             })
             .collect();
-        let largest = rows.iter().map(|(_, row)| row.constant.abs()).fold(0.0, f64::max);
+        let largest = rows
+            .iter()
+            .map(|(_, row)| row.constant.abs())
+            .fold(0.0, f64::max);
         if largest == 0.0 {
             return None;
         }
@@ -136,7 +141,9 @@ impl Network<'_> {
                 for &(x, slope) in &row.slopes {
                     if known[x].width() > 0.0 {
                         let empty = LinearExpr::empty;
-                        uses.entry(x).or_insert_with(empty).add(variable, sign * slope);
+                        uses.entry(x)
+                            .or_insert_with(empty)
+                            .add(variable, sign * slope);
                     }
                 }
             }
@@ -158,8 +165,13 @@ impl Network<'_> {
         if solution.objective() / largest > WORTH {
             return None;
         }
-        let values: Vec<f64> = multipliers.iter().map(|&(p, m)| solution[p] - solution[m]).collect();
-        let most = values.iter().fold(0.0, |most: f64, value| most.max(value.abs()));
+        let values: Vec<f64> = multipliers
+            .iter()
+            .map(|&(p, m)| solution[p] - solution[m])
+            .collect();
+        let most = values
+            .iter()
+            .fold(0.0, |most: f64, value| most.max(value.abs()));
         let sum: Sum = rows
             .iter()
             .zip(values)

@@ -94,7 +94,9 @@ impl Network<'_> {
                 if part.empty {
                     return 0.0;
                 }
-                let sum: f64 = (0..self.variables.len()).map(|v| self.width(&part.known, v)).sum();
+                let sum: f64 = (0..self.variables.len())
+                    .map(|v| self.width(&part.known, v))
+                    .sum();
                 sum.powi(3)
             };
             let score = left(&lower) + left(&upper);
@@ -120,7 +122,11 @@ impl Network<'_> {
         let own = self.variables[variable];
         part.known[own] = part.known[own].meet(interval(&part.spans[variable]));
         let mut changed = vec![own];
-        self.share(&mut part.known, variable, Some(&mut |value| changed.push(value)));
+        self.share(
+            &mut part.known,
+            variable,
+            Some(&mut |value| changed.push(value)),
+        );
         part.empty = self.refute(&mut part.known, &mut part.log, &changed);
         part
     }
@@ -128,7 +134,11 @@ impl Network<'_> {
     /// Width of a variable: radians, or lengths of half the chain.
     fn width(&self, known: &[Interval], variable: usize) -> f64 {
         let width = known[self.variables[variable]].width();
-        let mut driven = self.chain.joints.iter().filter(|joint| joint.variable == variable);
+        let mut driven = self
+            .chain
+            .joints
+            .iter()
+            .filter(|joint| joint.variable == variable);
         if driven.any(|joint| !joint.revolute) {
             width * 2.0 / self.chain.length
         } else {

@@ -3,10 +3,10 @@
 
 use crate::families::{Family, Kind};
 use crate::random::{Sample, posture, target};
-use balk::write::target_line;
-use balk::prove::{Prover, Subject};
 use balk::model::{Machine, Target};
+use balk::prove::{Prover, Subject};
 use balk::search::{Decision, Verdict};
+use balk::write::target_line;
 use balk_checker::proof::{Item, Proof};
 use balk_checker::{Checker, binary, text};
 use rand::SeedableRng;
@@ -41,11 +41,17 @@ pub fn planted(machines: u64, parts: u64, seed: u64) -> Vec<String> {
         .flat_map_iter(|number| {
             let mut random = ChaCha8Rng::seed_from_u64(seed ^ (number << 20));
             let mut wrong = Vec::new();
-            let Some(sample) = Sample::draw(&mut random) else { return wrong };
+            let Some(sample) = Sample::draw(&mut random) else {
+                return wrong;
+            };
             let prover = Prover::new(&sample.written, 0, [0; 32]);
             for _ in 0..4 {
-                let Some(values) = posture(&mut random, &sample.built) else { continue };
-                let Some(target) = target(&mut random, &sample.built, &values) else { continue };
+                let Some(values) = posture(&mut random, &sample.built) else {
+                    continue;
+                };
+                let Some(target) = target(&mut random, &sample.built, &values) else {
+                    continue;
+                };
                 let subject = Subject {
                     target: &target,
                     line: "",
@@ -97,13 +103,23 @@ impl Bench {
         let check = clock.elapsed().as_secs_f64();
         let bytes = proof.as_ref().map(|proof| {
             let bytes = binary::write(proof).expect("the prover writes what the format holds");
-            assert_eq!(binary::read(&bytes).as_ref(), Ok(proof), "binary round trip");
+            assert_eq!(
+                binary::read(&bytes).as_ref(),
+                Ok(proof),
+                "binary round trip"
+            );
             let words = text::write(proof).expect("the prover writes what the format holds");
-            assert_eq!(text::read(&words).as_ref().ok(), Some(proof), "text round trip");
+            assert_eq!(
+                text::read(&words).as_ref().ok(),
+                Some(proof),
+                "text round trip"
+            );
             bytes.len()
         });
         Row {
-            steps: proof.as_ref().map_or(0, |p| p.items.len() + 1 - parts_of(p)),
+            steps: proof
+                .as_ref()
+                .map_or(0, |p| p.items.len() + 1 - parts_of(p)),
             parts: proof.as_ref().map_or(0, parts_of),
             bytes: bytes.unwrap_or(0),
             nodes: decision.nodes,
@@ -147,7 +163,8 @@ pub fn run(kinds: &[Kind], targets: usize, nodes: u64, parts: u64, seed: u64) {
                 let place = (all.len() as f64 * share) as usize;
                 all.get(place).copied().unwrap_or(f64::NAN)
             };
-            let both = |of: &dyn Fn(&Row) -> f64| format!("{:.0} / {:.0}", at(of, 0.5), at(of, 0.99));
+            let both =
+                |of: &dyn Fn(&Row) -> f64| format!("{:.0} / {:.0}", at(of, 0.5), at(of, 0.99));
             println!(
                 "| {} | {} | {} | {} | {} | {} | {} | {:.3} | {:.2} | {:.3} | {:.1} / {:.1} |",
                 kind.name(),
@@ -163,7 +180,9 @@ pub fn run(kinds: &[Kind], targets: usize, nodes: u64, parts: u64, seed: u64) {
                 at(&|row| row.check / row.find, 0.5),
                 at(&|row| row.check / row.find, 0.99),
             );
-            let faults = rows.iter().filter_map(|row| Some((row, row.fault.as_ref()?)));
+            let faults = rows
+                .iter()
+                .filter_map(|row| Some((row, row.fault.as_ref()?)));
             for (row, fault) in faults.take(5) {
                 eprintln!("{} nodes: {fault}: {}", row.nodes, row.line);
             }

@@ -32,9 +32,7 @@ pub fn read(bytes: &[u8]) -> Result<Proof, Malformed> {
     let machine = from.digest()?;
     let tip = from.text()?;
     let target = from.text()?;
-    if target.contains('\n') {
-        return Err(Malformed::Text);
-    }
+    grammar::need_target(&target)?;
     let search = from.digest()?;
     let mut frames = Vec::new();
     for _ in 0..from.unsigned()? {

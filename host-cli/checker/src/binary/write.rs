@@ -13,9 +13,7 @@ use crate::proof::{Claim, Feature, Item, Place, Proof, Quantity, Span};
 /// What the format cannot hold: a reversed interval, an axis beyond the third, items that go on
 /// after the last branch has ended or stop before.
 pub fn write(proof: &Proof) -> Result<Vec<u8>, Malformed> {
-    if proof.target.contains('\n') {
-        return Err(Malformed::Text);
-    }
+    grammar::need_target(&proof.target)?;
     let mut to = Bytes(Vec::new());
     to.0.extend_from_slice(MARK);
     to.0.push(VERSION);
