@@ -50,8 +50,10 @@ const VARIABLE_BYTES: usize = 26;
 const JOINT_BYTES: usize = 28 + PLACEMENT_BYTES;
 const PLACEMENT_BYTES: usize = 104;
 const CHECKSUM_BYTES: usize = 4;
-/// How far the square of a placement may lie beyond zero and one: what packing rounds.
+/// How far the square of a placement may lie below zero: what packing rounds.
 const SQUARE_SLACK: i64 = 1 << 12;
+/// How far it stays below one, so that sums of eight products fit: packing leaves more.
+const SQUARE_ROOM: i64 = 1 << 40;
 
 static CHECKSUM: Crc<u32, Table<1>> = Crc::<u32, Table<1>>::new(&CRC_32_ISCSI);
 
@@ -98,7 +100,7 @@ pub enum Field {
     Multiple,
     /// An entry of a rotation: at most one in size.
     Rotation,
-    /// A squared length: bounds in order, from zero to one but for rounding.
+    /// A squared length: bounds in order, from zero but for rounding to a little below one.
     Square,
     /// The slack of a rotation: from zero to one, and one unit.
     TurnSlack,
@@ -387,7 +389,7 @@ impl Rest<'_> {
         let back = [self.interval()?, self.interval()?, self.interval()?];
         let lo = self.take().map(i64::from_le_bytes)?;
         let hi = self.take().map(i64::from_le_bytes)?;
-        let most = ONE_SQUARED + SQUARE_SLACK;
+        let most = ONE_SQUARED - SQUARE_ROOM;
         self.require(-SQUARE_SLACK <= lo && lo <= hi && hi <= most, Field::Square)?;
         Ok(Placement {
             rotation,

@@ -22,7 +22,7 @@ pub struct Placement {
     pub origin: [Interval; 3],
     /// The origin's vector expressed in this frame: transposed rotation times origin.
     pub back: [Interval; 3],
-    /// Squared length of the origin's vector.
+    /// Squared length of the origin's vector, at most 2^60 - 2^40.
     pub square: Product,
 }
 

@@ -174,6 +174,8 @@ pub enum Reason {
     PivotBudget,
     /// A part stayed open and no more cuts are allowed.
     SplitBudget,
+    /// A number of the target lies outside its documented range.
+    OutOfRange,
 }
 
 impl Reason {
@@ -184,6 +186,7 @@ impl Reason {
             Reason::NothingFound => "nothing found",
             Reason::PivotBudget => "pivot budget",
             Reason::SplitBudget => "split budget",
+            Reason::OutOfRange => "target out of range",
         }
     }
 }
@@ -256,6 +259,9 @@ pub fn screen<'w, const N: usize, const CELLS: usize, const PARTS: usize>(
     steps.clear();
     if chain.joints.len() > MOST_JOINTS || cells_for(chain.joints.len()) > CELLS {
         return Verdict::Passed(Reason::Capacity);
+    }
+    if !target.is_in_range() {
+        return Verdict::Passed(Reason::OutOfRange);
     }
     let goal = Goal::new(target);
     let mut network = Network::new(chain, &goal, options.rules, cells);

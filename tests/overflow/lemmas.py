@@ -71,7 +71,7 @@ PREMISES = [
     ("host-cli/src/pack/integers.rs", "square(size + xyz) as i64 + (1 << 12)", "squared length of a link"),
     ("host-cli/src/pack/integers.rs", "1 + (chord.min(1.0) * ONE as f64).ceil() as i32", "slack of a link: at most one"),
     ("host-cli/src/pack/integers.rs", "(known * snapped * ONE as f64).round() as i32", "entries of a rotation"),
-    ("core/src/record/read.rs", "!(least * least..=most * most).contains(&square)", "axes of a read target are units"),
+    ("core/src/target.rs", "(least * least..=most * most).contains(&square)", "axes of a target in range are units"),
     ("core/src/propagate/start.rs", "q.unsigned_abs() > ONE as u32", "components of a quaternion: at most one"),
     ("core/src/propagate/start.rs", "norm.lo < ONE_SQUARED >> 2", "length of a quaternion: at least one half"),
     ("core/src/propagate/cell.rs", "pub const ANYTHING: Cell = Cell { before: [Interval::UNIT; 3],", "cells are units"),

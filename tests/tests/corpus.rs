@@ -33,7 +33,9 @@ impl File {
         File {
             name: path.file_name().unwrap().to_str().unwrap().to_owned(),
             said,
-            notes: notes.map(|(key, value)| (key.to_owned(), value.to_owned())).collect(),
+            notes: notes
+                .map(|(key, value)| (key.to_owned(), value.to_owned()))
+                .collect(),
             text,
         }
     }
@@ -99,9 +101,17 @@ fn judge(kind: &str, say: impl Fn(&File) -> String, least: [usize; 3]) {
             let file = File::read(&entry.unwrap().path());
             let said = say(&file);
             assert_eq!(said, file.said, "{kind}/{class}/{}", file.name);
-            assert!(said.starts_with(class), "{kind}/{class}/{}: {said}", file.name);
+            assert!(
+                said.starts_with(class),
+                "{kind}/{class}/{}: {said}",
+                file.name
+            );
             let content = file.text.split_once('\n').map(|(_, rest)| rest.to_owned());
-            assert!(different.insert(content), "{kind}/{class}/{} is another's copy", file.name);
+            assert!(
+                different.insert(content),
+                "{kind}/{class}/{} is another's copy",
+                file.name
+            );
             count += 1;
         }
         println!("{kind}, {class}: {count}");
@@ -113,8 +123,12 @@ fn judge(kind: &str, say: impl Fn(&File) -> String, least: [usize; 3]) {
 }
 
 fn files(folder: &Path) -> usize {
-    let entries = fs::read_dir(folder).unwrap().map(|entry| entry.unwrap().path());
-    entries.map(|path| if path.is_dir() { files(&path) } else { 1 }).sum()
+    let entries = fs::read_dir(folder)
+        .unwrap()
+        .map(|entry| entry.unwrap().path());
+    entries
+        .map(|path| if path.is_dir() { files(&path) } else { 1 })
+        .sum()
 }
 
 #[test]
@@ -180,6 +194,9 @@ fn reasons_of_all_kinds_occur() {
         "cones are more than fit",
         "steps are more than fit",
     ] {
-        assert!(said.iter().any(|said| said.contains(reason)), "never said: {reason}");
+        assert!(
+            said.iter().any(|said| said.contains(reason)),
+            "never said: {reason}"
+        );
     }
 }

@@ -16,7 +16,11 @@ fn no_forged_proof_is_taken_for_a_proof() {
         );
         assert_eq!(lost, None, "{}: {} wrong", row.name, row.wrong.len());
         assert!(row.tried > 0, "nothing tried: {}", row.name);
-        assert!(row.accepted < row.tried || row.name == "search digest", "{}", row.name);
+        assert!(
+            row.accepted < row.tried || row.name == "search digest",
+            "{}",
+            row.name
+        );
     }
     let tried: u64 = rows.iter().map(|row| row.tried).sum();
     let turned: u64 = rows.iter().map(|row| row.turned).sum();

@@ -151,6 +151,7 @@ fn answer(machine: &balk::pack::Packed, target: &Target, options: &Options) -> (
         Verdict::Passed(Reason::NothingFound) => 2,
         Verdict::Passed(Reason::PivotBudget) => 3,
         Verdict::Passed(Reason::SplitBudget) => 4,
+        Verdict::Passed(Reason::OutOfRange) => 5,
     };
     let carrier = Record {
         sequence: 0,

@@ -129,5 +129,6 @@ pub fn answer(verdict: &Verdict) -> u8 {
         Verdict::Passed(Reason::NothingFound) => 2,
         Verdict::Passed(Reason::PivotBudget) => 3,
         Verdict::Passed(Reason::SplitBudget) => 4,
+        Verdict::Passed(Reason::OutOfRange) => 5,
     }
 }

@@ -180,7 +180,8 @@ impl Product {
     /// The number zero.
     pub const ZERO: Product = Product { lo: 0, hi: 0 };
 
-    /// Sum. The caller adds at most seven products of intervals.
+    /// Sum. The caller adds at most eight products of intervals, one of them a
+    /// squared offset (see [`Placement::square`](crate::machine::Placement::square)).
     #[inline]
     pub fn plus(self, other: Product) -> Product {
         Product {

@@ -7,7 +7,8 @@
 //! bound may be wider than the truth but never narrower.
 //!
 //! Overflow: inputs are at most 2^30 in size, so a product is at most 2^60 and the sums formed
-//! here (at most seven products) stay below 2^63.
+//! here (at most seven products, or eight with a squared offset, which the packer keeps 2^40 below
+//! 2^60) stay below 2^63.
 
 mod arc;
 mod direction;

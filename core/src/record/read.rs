@@ -4,10 +4,10 @@ use super::{
     BOUNDS_STEP, CHECKSUM, CHECKSUM_BYTES, HEAD_BYTES, RECORD_KIND, ROWS_STEP, SEAL_BYTES,
     SEAL_KIND, Seal, VERSION,
 };
-use crate::fixed::{Interval, ONE};
+use crate::fixed::Interval;
 use crate::propagate::{MOST_JOINTS, Rules};
 use crate::screen::{MOST_STEPS, Options, Step};
-use crate::target::{Cone, Orientation, Target};
+use crate::target::{Cone, Orientation, Target, is_half_sine, is_unit};
 use core::fmt;
 use heapless::Vec;
 
@@ -250,24 +250,20 @@ impl Rest<'_> {
 
     fn half_sine(&mut self) -> Result<i32, ReadError> {
         let [value] = self.numbers()?;
-        if !(0..=ONE).contains(&value) {
-            return Err(ReadError::Range(Field::HalfSine));
+        if is_half_sine(value) {
+            Ok(value)
+        } else {
+            Err(ReadError::Range(Field::HalfSine))
         }
-        Ok(value)
     }
 
     fn axis(&mut self) -> Result<[i32; 3], ReadError> {
         let axis = self.numbers()?;
-        // Three squares of at most 2^62 each, as unsigned numbers.
-        let square: u64 = axis
-            .iter()
-            .map(|c| i64::from(*c).unsigned_abs().pow(2))
-            .sum();
-        let (least, most) = (ONE as u64 - 2, ONE as u64 + 2);
-        if !(least * least..=most * most).contains(&square) {
-            return Err(ReadError::Range(Field::Axis));
+        if is_unit(axis) {
+            Ok(axis)
+        } else {
+            Err(ReadError::Range(Field::Axis))
         }
-        Ok(axis)
     }
 
     /// The steps of a tree of at most `splits` parts.

@@ -45,7 +45,11 @@ pub enum Change {
 /// The untouched proof of a target of two links.
 fn base(line: &str) -> String {
     let checker = Checker::new(&beside("links.toml"), "cup").expect("well written");
-    let digest: String = checker.digest().iter().map(|b| format!("{b:02x}")).collect();
+    let digest: String = checker
+        .digest()
+        .iter()
+        .map(|b| format!("{b:02x}"))
+        .collect();
     let search = "0".repeat(64);
     format!(
         "balk-proof 1\nmachine {digest}\ntip \"cup\"\ntarget {line}\nsearch {search}\n\
@@ -57,7 +61,13 @@ fn base(line: &str) -> String {
 /// The changed proof's text, and the name of the target it is given for.
 fn changed(change: Change) -> (String, &'static str) {
     let all = targets("links");
-    let line = |id: &str| all.iter().find(|(of, _)| of == id).expect("there is one").1.clone();
+    let line = |id: &str| {
+        all.iter()
+            .find(|(of, _)| of == id)
+            .expect("there is one")
+            .1
+            .clone()
+    };
     let far = base(&line("far"));
     let replaced = |from: &str, to: &str| {
         assert!(far.contains(from), "the proof has {from:?}");
@@ -68,7 +78,10 @@ fn changed(change: Change) -> (String, &'static str) {
         Change::Items(items) => (replaced(STEPS, &items.replace("{STEPS}", STEPS)), "far"),
         Change::Deep(depth) => {
             let splits = "split 1 at 0\n".repeat(depth);
-            (replaced(STEPS, &format!("{splits}{}", STEPS.repeat(depth + 1))), "far")
+            (
+                replaced(STEPS, &format!("{splits}{}", STEPS.repeat(depth + 1))),
+                "far",
+            )
         }
         Change::GivenFor(id) => (far, id),
         Change::For(id) => (base(&line(id)), id),
@@ -95,20 +108,45 @@ fn header(machine: &str, id: &str) -> String {
 /// Writes a proof's text.
 fn write_text(corpus: &mut Corpus, class: &str, name: &str, machine: &str, id: &str, proof: &str) {
     let of = targets(machine);
-    let line = &of.iter().find(|(other, _)| other == id).expect("there is one").1;
+    let line = &of
+        .iter()
+        .find(|(other, _)| other == id)
+        .expect("there is one")
+        .1;
     let rest = format!("{}{proof}", header(machine, id));
     // Lines are counted in the file, which has one more above these.
     let read = text::read(&format!("#\n{rest}")).map_err(|error| error.to_string());
-    corpus.write(class, &format!("{name}.proof"), &say(machine, line, read), &rest);
+    corpus.write(
+        class,
+        &format!("{name}.proof"),
+        &say(machine, line, read),
+        &rest,
+    );
 }
 
 /// Writes a proof's bytes, given for the target of two links that is too far.
-fn write_bytes(corpus: &mut Corpus, class: &str, name: &str, machine: &str, id: &str, proof: &[u8]) {
+fn write_bytes(
+    corpus: &mut Corpus,
+    class: &str,
+    name: &str,
+    machine: &str,
+    id: &str,
+    proof: &[u8],
+) {
     let of = targets(machine);
-    let line = &of.iter().find(|(other, _)| other == id).expect("there is one").1;
+    let line = &of
+        .iter()
+        .find(|(other, _)| other == id)
+        .expect("there is one")
+        .1;
     let read = binary::read(proof).map_err(|error| error.to_string());
     let rest = format!("{}{}", header(machine, id), hex(proof));
-    corpus.write(class, &format!("{name}.hex"), &say(machine, line, read), &rest);
+    corpus.write(
+        class,
+        &format!("{name}.hex"),
+        &say(machine, line, read),
+        &rest,
+    );
 }
 
 /// The bytes with the digest made right again.
@@ -117,7 +155,11 @@ fn sealed(body: &[u8]) -> Vec<u8> {
 }
 
 pub fn write(corpus: &mut Corpus) {
-    for (class, changes) in [("accepted", ACCEPTED), ("rejected", REJECTED), ("malformed", TEXT)] {
+    for (class, changes) in [
+        ("accepted", ACCEPTED),
+        ("rejected", REJECTED),
+        ("malformed", TEXT),
+    ] {
         for (name, change) in changes {
             let (proof, id) = changed(*change);
             write_text(corpus, class, name, "links", id, &proof);
@@ -130,17 +172,41 @@ pub fn write(corpus: &mut Corpus) {
     for (name, from, to) in BYTES {
         let places = body.windows(from.len()).filter(|part| part == from).count();
         assert!(places > 0, "{name}: the bytes are there");
-        let at = body.windows(from.len()).position(|part| part == *from).unwrap_or(0);
+        let at = body
+            .windows(from.len())
+            .position(|part| part == *from)
+            .unwrap_or(0);
         let new = [&body[..at], to, &body[at + from.len()..]].concat();
         write_bytes(corpus, "malformed", name, "links", "far", &sealed(&new));
     }
     let mut turned = bytes.clone();
     turned[60] ^= 4;
-    write_bytes(corpus, "malformed", "digest-of-a-flipped-bit", "links", "far", &turned);
+    write_bytes(
+        corpus,
+        "malformed",
+        "digest-of-a-flipped-bit",
+        "links",
+        "far",
+        &turned,
+    );
     write_bytes(corpus, "malformed", "digest-missing", "links", "far", body);
     write_bytes(corpus, "malformed", "nothing", "links", "far", &[]);
-    write_bytes(corpus, "malformed", "cut-short", "links", "far", &sealed(&body[..body.len() - 1]));
-    write_bytes(corpus, "malformed", "byte-at-the-end", "links", "far", &sealed(&[body, &[0]].concat()));
+    write_bytes(
+        corpus,
+        "malformed",
+        "cut-short",
+        "links",
+        "far",
+        &sealed(&body[..body.len() - 1]),
+    );
+    write_bytes(
+        corpus,
+        "malformed",
+        "byte-at-the-end",
+        "links",
+        "far",
+        &sealed(&[body, &[0]].concat()),
+    );
     write_proved(corpus);
 }
 
@@ -151,13 +217,23 @@ fn write_proved(corpus: &mut Corpus) {
     let digest = Checker::new(&file, "cup").expect("well written").digest();
     let prover = Prover::new(&arm, 0, digest);
     for (number, (id, line)) in targets("arm").into_iter().enumerate() {
-        let written = Line { number, bytes: Some(line.clone().into_bytes()) };
-        let (_, target) = ((), target(&written, "arm.jsonl", &arm).expect("well written"));
-        let subject = Subject { target: &target, line: &line, search: [7; 32] };
-        let Ok(proof) = prover.prove(&subject, 2000) else { continue };
+        let written = Line {
+            number,
+            bytes: Some(line.clone().into_bytes()),
+        };
+        let target = target(&written, "arm.jsonl", &arm).expect("well written");
+        let subject = Subject {
+            target: &target,
+            line: &line,
+            search: [7; 32],
+        };
+        let Ok(proof) = prover.prove(&subject, 2000) else {
+            continue;
+        };
+        let name = format!("arm-{id}");
         let words = text::write(&proof).expect("the format holds it");
-        write_text(corpus, "accepted", &id, "arm", &id, &words);
+        write_text(corpus, "accepted", &name, "arm", &id, &words);
         let bytes = binary::write(&proof).expect("the format holds it");
-        write_bytes(corpus, "accepted", &id, "arm", &id, &bytes);
+        write_bytes(corpus, "accepted", &name, "arm", &id, &bytes);
     }
 }

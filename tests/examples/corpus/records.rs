@@ -64,7 +64,10 @@ pub fn write(corpus: &mut Corpus) {
     let mut of = |id: &str, splits: u16| -> Option<RecordBytes> {
         let all = targets("arm");
         let (number, (_, line)) = all.iter().enumerate().find(|(_, (other, _))| other == id)?;
-        let written = Line { number, bytes: Some(line.clone().into_bytes()) };
+        let written = Line {
+            number,
+            bytes: Some(line.clone().into_bytes()),
+        };
         let target = target(&written, "arm.jsonl", &arm).expect("well written");
         match solver.screen(&target, splits) {
             Screening::Refused { mut record } => {
@@ -84,10 +87,23 @@ pub fn write(corpus: &mut Corpus) {
     let far = of("far", 1).expect("far is refused");
     let cones = of("upward", 16).expect("upward is refused");
     let near = of("turned", 16).expect("turned is refused");
-    put("accepted", "number-large", &with(&far, SEQUENCE, &[0xff; 4]));
-    put("accepted", "digest-of-another-chain", &with(&far, DIGEST, &[1; 8]));
+    put(
+        "accepted",
+        "number-large",
+        &with(&far, SEQUENCE, &[0xff; 4]),
+    );
+    put(
+        "accepted",
+        "digest-of-another-chain",
+        &with(&far, DIGEST, &[1; 8]),
+    );
     put("accepted", "seal-of-nothing", &Chain::new().seal(0).bytes());
-    let seal = Seal { next: 7, digest: 9, lost: 1 }.bytes();
+    let seal = Seal {
+        next: 7,
+        digest: 9,
+        lost: 1,
+    }
+    .bytes();
     put("accepted", "seal", &seal);
 
     rejected(&mut put, &far, &cones, &near);
@@ -109,7 +125,11 @@ fn with_steps(record: &[u8], steps: &[u8]) -> Vec<u8> {
     let at = steps_at(record);
     let mut body = record[..at].to_vec();
     body.push(steps.len() as u8);
-    body.extend(steps.chunks(2).map(|pair| pair[0] | pair.get(1).unwrap_or(&0) << 4));
+    body.extend(
+        steps
+            .chunks(2)
+            .map(|pair| pair[0] | pair.get(1).unwrap_or(&0) << 4),
+    );
     sealed(&body)
 }
 
@@ -118,28 +138,62 @@ type Put<'a> = dyn FnMut(&str, &str, &[u8]) + 'a;
 fn rejected(put: &mut Put, far: &[u8], cones: &[u8], near: &[u8]) {
     let mut put = |name: &str, bytes: &[u8]| put("rejected", name, bytes);
     for (name, record) in [("far", far), ("cones", cones), ("near", near)] {
-        put(&format!("machine-another-{name}"), &with(record, FINGERPRINT, &[7; 8]));
+        put(
+            &format!("machine-another-{name}"),
+            &with(record, FINGERPRINT, &[7; 8]),
+        );
         let bit = record[FINGERPRINT] ^ 1;
-        put(&format!("machine-one-bit-{name}"), &with(record, FINGERPRINT, &[bit]));
+        put(
+            &format!("machine-one-bit-{name}"),
+            &with(record, FINGERPRINT, &[bit]),
+        );
         let whole = [(-ONE).to_le_bytes(), ONE.to_le_bytes()].concat().repeat(3);
-        put(&format!("target-everywhere-{name}"), &with(record, POSITION, &whole));
+        put(
+            &format!("target-everywhere-{name}"),
+            &with(record, POSITION, &whole),
+        );
         put(&format!("rules-none-{name}"), &with(record, RULES, &[0]));
         // A tree that the core does not make.
-        put(&format!("tree-one-cut-more-{name}"), &with_steps(&with(record, SPLITS, &[64, 0]), &[0, 0, 0, 14, 14, 14, 14]));
+        put(
+            &format!("tree-one-cut-more-{name}"),
+            &with_steps(&with(record, SPLITS, &[64, 0]), &[0, 0, 0, 14, 14, 14, 14]),
+        );
         put(&format!("tree-by-rows-{name}"), &with_steps(record, &[15]));
-        put(&format!("tree-empty-range-{name}"), &with_steps(&with(record, SPLITS, &[2, 0]), &[3, 15, 15]));
+        put(
+            &format!("tree-empty-range-{name}"),
+            &with_steps(&with(record, SPLITS, &[2, 0]), &[3, 15, 15]),
+        );
     }
-    put("position-one-axis-free", &with(far, POSITION, &[(-ONE).to_le_bytes(), ONE.to_le_bytes()].concat()));
+    put(
+        "position-one-axis-free",
+        &with(
+            far,
+            POSITION,
+            &[(-ONE).to_le_bytes(), ONE.to_le_bytes()].concat(),
+        ),
+    );
     let widest = ONE.to_le_bytes();
-    put("orientation-any-half-sine", &with(near, ORIENTATION + 17, &widest));
-    put("quaternion-of-nothing", &with(near, ORIENTATION + 1, &[0; 16]));
+    put(
+        "orientation-any-half-sine",
+        &with(near, ORIENTATION + 17, &widest),
+    );
+    put(
+        "quaternion-of-nothing",
+        &with(near, ORIENTATION + 1, &[0; 16]),
+    );
     let mut free = near[..ORIENTATION].to_vec();
     free.extend([0, 1, 14]);
     put("orientation-left-out", &sealed(&free));
-    put("cone-any-half-sine", &with(cones, ORIENTATION + 2 + 24, &widest));
+    put(
+        "cone-any-half-sine",
+        &with(cones, ORIENTATION + 2 + 24, &widest),
+    );
     let none = [&cones[..ORIENTATION], &[2, 0, 1, 14]].concat();
     put("cones-left-out", &sealed(&none));
-    put("pivots-none-tree-by-rows", &with_steps(&with(cones, PIVOTS, &[0, 0]), &[15]));
+    put(
+        "pivots-none-tree-by-rows",
+        &with_steps(&with(cones, PIVOTS, &[0, 0]), &[15]),
+    );
 }
 
 fn malformed(put: &mut Put, far: &[u8], cones: &[u8], near: &[u8], seal: &[u8]) {
@@ -169,17 +223,44 @@ fn malformed(put: &mut Put, far: &[u8], cones: &[u8], near: &[u8], seal: &[u8]) 
     put("cut-in-the-steps", &without(far, 1));
     put("byte-too-many", &sealed(&[&body(far)[..], &[0]].concat()));
     put("record-twice", &[far, far].concat());
-    put("half-byte-not-zero", &with(far, steps_at(far) + 1, &[14 | 0x10]));
+    put(
+        "half-byte-not-zero",
+        &with(far, steps_at(far) + 1, &[14 | 0x10]),
+    );
     put("orientation-unknown", &with(far, ORIENTATION, &[3]));
     put("rules-unknown", &with(far, RULES, &[0xff]));
-    put("position-beyond-one", &with(far, POSITION, &(ONE + 2).to_le_bytes()));
-    put("position-below-minus-one", &with(far, POSITION, &(-ONE - 1).to_le_bytes()));
-    put("half-sine-minus", &with(near, ORIENTATION + 17, &(-1i32).to_le_bytes()));
-    put("half-sine-beyond-one", &with(near, ORIENTATION + 17, &(ONE + 1).to_le_bytes()));
-    put("cone-half-sine-minus", &with(cones, ORIENTATION + 26, &(-1i32).to_le_bytes()));
-    put("cone-axis-too-long", &with(cones, ORIENTATION + 2, &(ONE + 3).to_le_bytes()));
-    put("cone-axis-too-short", &with(cones, ORIENTATION + 2, &(ONE - 3).to_le_bytes()));
-    put("cone-axis-of-nothing", &with(cones, ORIENTATION + 14, &[0; 12]));
+    put(
+        "position-beyond-one",
+        &with(far, POSITION, &(ONE + 2).to_le_bytes()),
+    );
+    put(
+        "position-below-minus-one",
+        &with(far, POSITION, &(-ONE - 1).to_le_bytes()),
+    );
+    put(
+        "half-sine-minus",
+        &with(near, ORIENTATION + 17, &(-1i32).to_le_bytes()),
+    );
+    put(
+        "half-sine-beyond-one",
+        &with(near, ORIENTATION + 17, &(ONE + 1).to_le_bytes()),
+    );
+    put(
+        "cone-half-sine-minus",
+        &with(cones, ORIENTATION + 26, &(-1i32).to_le_bytes()),
+    );
+    put(
+        "cone-axis-too-long",
+        &with(cones, ORIENTATION + 2, &(ONE + 3).to_le_bytes()),
+    );
+    put(
+        "cone-axis-too-short",
+        &with(cones, ORIENTATION + 2, &(ONE - 3).to_le_bytes()),
+    );
+    put(
+        "cone-axis-of-nothing",
+        &with(cones, ORIENTATION + 14, &[0; 12]),
+    );
     put("cones-more-than-fit", &{
         let mut bytes = cones[..ORIENTATION + 1].to_vec();
         bytes.push(4);
@@ -187,14 +268,32 @@ fn malformed(put: &mut Put, far: &[u8], cones: &[u8], near: &[u8], seal: &[u8]) 
         bytes.extend([1, 14]);
         sealed(&bytes)
     });
-    put("steps-more-than-fit", &with_steps(&with(far, SPLITS, &[64, 0]), &[&[0; 70][..], &[14; 71]].concat()));
+    put(
+        "steps-more-than-fit",
+        &with_steps(
+            &with(far, SPLITS, &[64, 0]),
+            &[&[0; 70][..], &[14; 71]].concat(),
+        ),
+    );
     put("steps-none", &with_steps(far, &[]));
-    put("tree-not-closed", &with_steps(&with(far, SPLITS, &[8, 0]), &[0, 14]));
+    put(
+        "tree-not-closed",
+        &with_steps(&with(far, SPLITS, &[8, 0]), &[0, 14]),
+    );
     put("tree-closed-twice", &with_steps(far, &[14, 14]));
-    put("tree-of-more-parts-than-splits", &with_steps(far, &[0, 14, 14]));
-    put("tree-of-more-parts-than-no-splits", &with_steps(&with(far, SPLITS, &[0, 0]), &[0, 14, 14]));
+    put(
+        "tree-of-more-parts-than-splits",
+        &with_steps(far, &[0, 14, 14]),
+    );
+    put(
+        "tree-of-more-parts-than-no-splits",
+        &with_steps(&with(far, SPLITS, &[0, 0]), &[0, 14, 14]),
+    );
     put("seal-cut", &sealed(&seal[..seal.len() - CHECKSUM - 1]));
-    put("seal-byte-too-many", &sealed(&[&body(seal)[..], &[0]].concat()));
+    put(
+        "seal-byte-too-many",
+        &sealed(&[&body(seal)[..], &[0]].concat()),
+    );
     put("seal-checksum", &flipped(seal, 3));
     put("seal-version-3", &with(seal, 1, &[3]));
     put("seal-of-a-record", &with(seal, 0, &[0xb1]));

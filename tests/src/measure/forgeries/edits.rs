@@ -118,12 +118,21 @@ impl Edit {
             Edit::FrameTurn => ("frame's quaternion", Some("another frame on the same axis")),
             Edit::FrameShift => ("frame's shift", Some("steps with room to spare")),
             Edit::BoundByUnit => ("bound by one unit", Some("steps with room to spare")),
-            Edit::Bound => ("bound", Some("a looser bound that suffices, or room to spare")),
+            Edit::Bound => (
+                "bound",
+                Some("a looser bound that suffices, or room to spare"),
+            ),
             Edit::Quantity => ("quantity", Some("a bound that follows and is not needed")),
             Edit::Rule => ("rule", Some("two rules that say the same here")),
-            Edit::Joint => ("joint, link or cone", Some("two rules that say the same here")),
+            Edit::Joint => (
+                "joint, link or cone",
+                Some("two rules that say the same here"),
+            ),
             Edit::Feature => ("feature", Some("two rules that say the same here")),
-            Edit::Claim => ("kind of claim", Some("the half of the claim that is needed")),
+            Edit::Claim => (
+                "kind of claim",
+                Some("the half of the claim that is needed"),
+            ),
             Edit::Multiplier => ("multiplier", Some("combinations with room to spare")),
             Edit::StepGone => ("step left out", Some("the bounds without it suffice")),
             Edit::StepTwice => ("step twice", Some("what held still holds")),
@@ -132,7 +141,10 @@ impl Edit {
             Edit::EndEarly => ("step made the end", Some("it leaves nothing already")),
             Edit::SplitByUnit => ("split by one unit", Some("both parts have room to spare")),
             Edit::Split => ("split elsewhere", Some("both parts have room to spare")),
-            Edit::SplitVariable => ("variable of a split", Some("parts that do not need the split")),
+            Edit::SplitVariable => (
+                "variable of a split",
+                Some("parts that do not need the split"),
+            ),
             Edit::HalvesExchanged => ("halves exchanged", Some("parts alike")),
         }
     }
@@ -142,7 +154,9 @@ impl Edit {
         let mut new = proof.clone();
         let items = proof.items.len();
         match self {
-            Edit::Machine => new.machine[random.random_range(0..32)] ^= random.random_range(1..=255),
+            Edit::Machine => {
+                new.machine[random.random_range(0..32)] ^= random.random_range(1..=255)
+            }
             Edit::Search => new.search[random.random_range(0..32)] ^= random.random_range(1..=255),
             Edit::Tip => new.tip.push('x'),
             Edit::Target => new.target = retargeted(&proof.target, random)?,
@@ -195,7 +209,9 @@ impl Edit {
             Edit::EndEarly => {
                 let index = random.random_range(0..items);
                 let end = end_of(&proof.items, index)?;
-                let Item::Step(step) = &mut new.items[index] else { return None };
+                let Item::Step(step) = &mut new.items[index] else {
+                    return None;
+                };
                 step.claim = Claim::Nothing;
                 new.items.drain(index + 1..end);
             }
@@ -232,7 +248,9 @@ impl Edit {
             | Edit::Claim
             | Edit::Multiplier => {
                 let index = random.random_range(0..items);
-                let Item::Step(step) = &proof.items[index] else { return None };
+                let Item::Step(step) = &proof.items[index] else {
+                    return None;
+                };
                 new.items[index] = Item::Step(self.step(proof, step, random)?);
             }
         }
@@ -247,9 +265,15 @@ impl Edit {
                 let unit = self == Edit::BoundByUnit;
                 let by = if unit { sign(random) } else { by(random) };
                 match &mut new.claim {
-                    Claim::AtLeast(bound) | Claim::AtMost(bound) => *bound = bound.checked_add(by)?,
+                    Claim::AtLeast(bound) | Claim::AtMost(bound) => {
+                        *bound = bound.checked_add(by)?
+                    }
                     Claim::Within(span) => {
-                        let end = if random.random() { &mut span.lo } else { &mut span.hi };
+                        let end = if random.random() {
+                            &mut span.lo
+                        } else {
+                            &mut span.hi
+                        };
                         *end = end.checked_add(by)?;
                     }
                     Claim::Nothing => return None,
@@ -258,13 +282,21 @@ impl Edit {
             Edit::Claim => new.claim = other_claim(step.claim, random),
             Edit::Quantity => {
                 let other = proof.items.choose(random)?;
-                let Item::Step(other) = other else { return None };
+                let Item::Step(other) = other else {
+                    return None;
+                };
                 new.quantity = other.quantity;
             }
             Edit::Multiplier => {
-                let Rule::Sum(list) = &mut new.rule else { return None };
+                let Rule::Sum(list) = &mut new.rule else {
+                    return None;
+                };
                 let term = random.random_range(0..list.len());
-                let by = if random.random() { sign(random) } else { by(random) };
+                let by = if random.random() {
+                    sign(random)
+                } else {
+                    by(random)
+                };
                 list[term].0 = list[term].0.checked_add(by)?;
             }
             _ => return reworded(proof, step, |words| self.word(words, random)),

@@ -11,7 +11,7 @@ mod edits;
 mod reachable;
 mod truth;
 
-use crate::families::{Family, Kind};
+use crate::families::{Family, Kind, NAMES};
 use crate::measure::proofs::Bench;
 use balk::model::Target;
 use balk::prove::Subject;
@@ -68,7 +68,15 @@ impl Row {
     }
 
     fn print(&self) {
-        let Row { name, why, tried, unread, accepted, turned, wrong } = self;
+        let Row {
+            name,
+            why,
+            tried,
+            unread,
+            accepted,
+            turned,
+            wrong,
+        } = self;
         let rejected = tried - unread - accepted;
         println!(
             "| {name} | {tried} | {unread} | {rejected} | {accepted} | {turned} | {} | {why} |",
@@ -111,12 +119,18 @@ impl Arms {
     pub fn cases(&self, count: usize, seed: u64) -> Vec<Case<'_>> {
         let kinds = self.0.len() * Kind::ALL.len();
         let each = count.div_ceil(kinds);
-        let turns: Vec<_> = self.0.iter().flat_map(|arm| Kind::ALL.map(|kind| (arm, kind))).collect();
+        let turns: Vec<_> = self
+            .0
+            .iter()
+            .flat_map(|arm| Kind::ALL.map(|kind| (arm, kind)))
+            .collect();
         let mut cases: Vec<Vec<Case>> = turns
             .into_par_iter()
             .map(|((family, bench), kind)| {
                 let targets = family.targets(kind, 60 * each + 200, seed);
-                let cases = targets.iter().filter_map(|target| Case::new(family, bench, target, seed));
+                let cases = targets
+                    .iter()
+                    .filter_map(|target| Case::new(family, bench, target, seed));
                 cases.take(each).collect()
             })
             .collect();
@@ -143,11 +157,16 @@ fn splits(proof: &Proof) -> usize {
 impl<'a> Case<'a> {
     /// The proof of a target, if it is unreachable and the proof not too long.
     fn new(family: &'a Family, bench: &'a Bench, target: &Target, seed: u64) -> Option<Case<'a>> {
-        let Verdict::Unreachable { proof: search } = family.solver.decide(target, 100).verdict else {
+        let Verdict::Unreachable { proof: search } = family.solver.decide(target, 100).verdict
+        else {
             return None;
         };
         let line = target_line(target, &family.machine.tips[0].name);
-        let subject = Subject { target, line: &line, search };
+        let subject = Subject {
+            target,
+            line: &line,
+            search,
+        };
         let proof = bench.prover.prove(&subject, PARTS).ok()?;
         if proof.items.len() > MOST_STEPS[usize::from(splits(&proof) > 0)] {
             return None;
@@ -188,12 +207,16 @@ impl<'a> Case<'a> {
 
     /// Checks a tampered proof against its own target, and turned against one beside it.
     fn judge(&self, forged: &Proof, never: bool, turn: usize) -> Row {
-        let mut row = Row { tried: 1, ..Row::default() };
+        let mut row = Row {
+            tried: 1,
+            ..Row::default()
+        };
         if self.checker.check(forged, &self.line).is_ok() {
             row.accepted = 1;
             let never = never.then_some("of a kind that is never a proof");
             let fault = never.or_else(|| self.fault(forged));
-            row.wrong.extend(fault.map(|fault| format!("accepted {fault}: {}", self.line)));
+            row.wrong
+                .extend(fault.map(|fault| format!("accepted {fault}: {}", self.line)));
         }
         if let Some(of) = self.beside.get(turn % self.beside.len().max(1)) {
             row = row.plus(self.turned(forged, of));
@@ -203,15 +226,23 @@ impl<'a> Case<'a> {
 
     /// Turns a tampered proof against a reachable target.
     fn turned(&self, forged: &Proof, of: &Reachable) -> Row {
-        let proof = Proof { target: of.line.clone(), ..forged.clone() };
+        let proof = Proof {
+            target: of.line.clone(),
+            ..forged.clone()
+        };
         let result = self.checker.check(&proof, &of.line);
-        let mut row = Row { turned: 1, ..Row::default() };
+        let mut row = Row {
+            turned: 1,
+            ..Row::default()
+        };
         if result.is_ok() {
-            row.wrong.push(format!("accepted for a reachable target: {}", of.line));
+            row.wrong
+                .push(format!("accepted for a reachable target: {}", of.line));
         }
         let truth = Truth::of(&self.family.machine, &of.values, &of.target, &proof.frames);
         if let Some(item) = truth.contradicts(&proof, accepted(&proof, &result)) {
-            row.wrong.push(format!("item {item} contradicts a posture: {}", of.line));
+            row.wrong
+                .push(format!("item {item} contradicts a posture: {}", of.line));
         }
         row
     }
@@ -221,14 +252,23 @@ impl<'a> Case<'a> {
     pub fn is_contradicted(&self) -> bool {
         let all = self.proof.items.len();
         self.beside.iter().all(|of| {
-            let truth = Truth::of(&self.family.machine, &of.values, &of.target, &self.proof.frames);
+            let truth = Truth::of(
+                &self.family.machine,
+                &of.values,
+                &of.target,
+                &self.proof.frames,
+            );
             truth.contradicts(&self.proof, all).is_some()
         })
     }
 
     /// Every bit flipped: as it is, and with the digest at the end made right again.
     pub fn flips(&self, resealed: bool) -> Row {
-        let end = if resealed { self.bytes.len() - DIGEST } else { self.bytes.len() };
+        let end = if resealed {
+            self.bytes.len() - DIGEST
+        } else {
+            self.bytes.len()
+        };
         let flips = (0..end * 8).into_par_iter().map(|bit| {
             let mut bytes = self.bytes.clone();
             bytes[bit / 8] ^= 1 << (bit % 8);
@@ -238,15 +278,26 @@ impl<'a> Case<'a> {
             }
             match binary::read(&bytes) {
                 Ok(forged) => self.judge(&forged, !resealed, bit),
-                Err(_) => Row { tried: 1, unread: 1, ..Row::default() },
+                Err(_) => Row {
+                    tried: 1,
+                    unread: 1,
+                    ..Row::default()
+                },
             }
         });
         let row = flips.reduce(Row::default, Row::plus);
         if resealed {
             let why = "search digest, bounds with room to spare, numbers spelled otherwise";
-            Row { name: "one bit, digest made right", why, ..row }
+            Row {
+                name: "one bit, digest made right",
+                why,
+                ..row
+            }
         } else {
-            Row { name: "one bit", ..row }
+            Row {
+                name: "one bit",
+                ..row
+            }
         }
     }
 
@@ -254,14 +305,19 @@ impl<'a> Case<'a> {
     pub fn edits(&self, edit: Edit, count: u64, seed: u64) -> Row {
         let (name, why) = edit.describe();
         let mut random = ChaCha8Rng::seed_from_u64(seed);
-        let mut all = Row { name, why: why.unwrap_or_default(), ..Row::default() };
+        let mut all = Row {
+            name,
+            why: why.unwrap_or_default(),
+            ..Row::default()
+        };
         for turn in 0..count {
             if let Some(forged) = edit.apply(&self.proof, &mut random) {
                 // What the bytes can hold reads back.
                 if let Ok(bytes) = binary::write(&forged)
                     && binary::read(&bytes).as_ref() != Ok(&forged)
                 {
-                    all.wrong.push(format!("reads back differently: {}", self.line));
+                    all.wrong
+                        .push(format!("reads back differently: {}", self.line));
                 }
                 all = all.plus(self.judge(&forged, why.is_none(), turn as usize));
             }
@@ -273,27 +329,43 @@ impl<'a> Case<'a> {
     fn other_machines(&self) -> Row {
         let text = &self.family.text;
         let tip = &self.proof.tip;
-        let limit = text.split("limits_deg = [").nth(1).and_then(|rest| rest.split(',').next());
-        let wider = limit.map(|limit| text.replacen(&format!("[{limit},"), &format!("[{limit}.000000001,"), 1));
-        let looser = text.replacen("kind = \"revolute\"\n", "kind = \"revolute\"\ntolerance = { xyz = 1e-9 }\n", 1);
-        let others = crate::families::NAMES.into_iter().map(|name| Family::read(name).text);
-        let mut row = Row { name: "another machine", ..Row::default() };
-        for (other, never) in wider.map(|wider| (wider, true)).into_iter()
-            .chain([(looser, false)])
-            .chain(others.filter(|other| other != text).map(|other| (other, true)))
-        {
+        let limits = text.split("limits_deg = [").nth(1);
+        let lower = limits.and_then(|rest| rest.split(',').next());
+        let lower = lower.expect("the first joint has limits");
+        let wider = text.replacen(&format!("[{lower},"), &format!("[{lower}.000000001,"), 1);
+        let revolute = "kind = \"revolute\"\n";
+        let loose = format!("{revolute}tolerance = {{ xyz = 1e-9 }}\n");
+        let looser = text.replacen(revolute, &loose, 1);
+        // The other arms, with a tip of this one's name.
+        let others = NAMES.into_iter().map(|name| {
+            let other = Family::read(name);
+            let tips = [&other.machine.tips[0].name, tip];
+            let [theirs, ours] = tips.map(|tip| format!("name = {tip:?}"));
+            other.text.replace(&theirs, &ours)
+        });
+        let others = others.filter(|other| other != text).map(|other| (other, false));
+        let mut row = Row {
+            name: "another machine",
+            ..Row::default()
+        };
+        for (other, never) in [(wider, true), (looser, false)].into_iter().chain(others) {
             let checker = Checker::new(&other, tip).expect("the machine is well written");
             row.tried += 1;
             if checker.check(&self.proof, &self.line).is_ok() {
-                row.wrong.push(format!("accepted for another machine: {}", self.line));
+                row.wrong
+                    .push(format!("accepted for another machine: {}", self.line));
             }
             // With the other's digest it is a proof only if every step holds for the other as well.
-            let forged = Proof { machine: checker.digest(), ..self.proof.clone() };
+            let forged = Proof {
+                machine: checker.digest(),
+                ..self.proof.clone()
+            };
             row.tried += 1;
             if checker.check(&forged, &self.line).is_ok() {
                 row.accepted += 1;
                 if never {
-                    row.wrong.push(format!("accepted with another's digest: {}", self.line));
+                    row.wrong
+                        .push(format!("accepted with another's digest: {}", self.line));
                 }
             }
         }
@@ -303,7 +375,10 @@ impl<'a> Case<'a> {
 
     /// The untouched proof for other targets and tips.
     fn other_targets(&self) -> Row {
-        let mut row = Row { name: "another target, tolerance or tip", ..Row::default() };
+        let mut row = Row {
+            name: "another target, tolerance or tip",
+            ..Row::default()
+        };
         let mut others: Vec<String> = self.beside.iter().map(|of| of.line.clone()).collect();
         let tip = &self.proof.tip;
         for change in 0..4 {
@@ -320,7 +395,8 @@ impl<'a> Case<'a> {
         for line in others {
             row.tried += 1;
             if self.checker.check(&self.proof, &line).is_ok() {
-                row.wrong.push(format!("accepted for another target: {line}"));
+                row.wrong
+                    .push(format!("accepted for another target: {line}"));
             }
         }
         row
@@ -328,7 +404,10 @@ impl<'a> Case<'a> {
 
     /// Proofs of narrower limits for the reachable targets beside this one.
     fn gaps(&self) -> Row {
-        let mut all = Row { name: "narrower limits, alone or joined", ..Row::default() };
+        let mut all = Row {
+            name: "narrower limits, alone or joined",
+            ..Row::default()
+        };
         for of in &self.beside {
             for forged in gapped(self.family, self.checker.digest(), of) {
                 all.tried += 1;
@@ -340,12 +419,21 @@ impl<'a> Case<'a> {
 
     /// This proof mended for the reachable targets beside it.
     fn mended(&self) -> Row {
-        let mut all = Row { name: "mended step by step", ..Row::default() };
+        let mut all = Row {
+            name: "mended step by step",
+            ..Row::default()
+        };
         for of in &self.beside {
-            let truth = Truth::of(&self.family.machine, &of.values, &of.target, &self.proof.frames);
+            let truth = Truth::of(
+                &self.family.machine,
+                &of.values,
+                &of.target,
+                &self.proof.frames,
+            );
             all.tried += 1;
             all.turned += 1;
-            all.wrong.extend(mended(self.checker, self.proof.clone(), of, &truth));
+            all.wrong
+                .extend(mended(self.checker, self.proof.clone(), of, &truth));
         }
         all
     }
@@ -357,7 +445,10 @@ impl<'a> Case<'a> {
 pub fn all(cases: &[Case], flipped: usize, edits: u64, seed: u64) -> Vec<Row> {
     let per = edits.div_ceil((Edit::ALL.len() * cases.len()) as u64);
     let over = |of: &(dyn Fn(usize, &Case) -> Row + Sync)| {
-        let rows = cases.par_iter().enumerate().map(|(number, case)| of(number, case));
+        let rows = cases
+            .par_iter()
+            .enumerate()
+            .map(|(number, case)| of(number, case));
         rows.reduce(Row::default, Row::plus)
     };
     let mut rows = vec![over(&|_, case| case.flips(false))];
@@ -387,12 +478,19 @@ pub fn run(proofs: usize, flipped: usize, edits: u64, seed: u64) {
         steps.get(steps.len() / 2).copied().unwrap_or(0),
         steps.last().copied().unwrap_or(0),
     );
-    println!("| what is changed | tried | not read | rejected | accepted | turned against a reachable target | wrong | why some are still proofs |");
+    println!(
+        "| what is changed | tried | not read | rejected | accepted | turned against a reachable target | wrong | why some are still proofs |"
+    );
     println!("|---|---|---|---|---|---|---|---|");
     let rows = all(&cases, flipped, edits, seed);
     rows.iter().for_each(Row::print);
     let total = rows.iter().cloned().fold(Row::default(), Row::plus);
-    Row { name: "all", why: "", ..total }.print();
+    Row {
+        name: "all",
+        why: "",
+        ..total
+    }
+    .print();
     println!("\n{:.0} s", clock.elapsed().as_secs_f64());
     for wrong in rows.iter().flat_map(|row| &row.wrong).take(10) {
         eprintln!("{wrong}");

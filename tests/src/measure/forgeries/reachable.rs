@@ -38,10 +38,14 @@ pub fn beside(family: &Family, target: &Target, random: &mut impl Rng) -> Vec<Re
     let linkage = Linkage::new(&family.machine, 0, drives);
     let starts = (0..STARTS).map(|_| {
         let limits = linkage.limits.iter();
-        let mut start: Vec<f64> = limits.map(|[lo, hi]| random.random_range(*lo..*hi)).collect();
+        let mut start: Vec<f64> = limits
+            .map(|[lo, hi]| random.random_range(*lo..*hi))
+            .collect();
         (linkage.seek(target, &mut start), start)
     });
-    let Some((_, best)) = starts.min_by(|a, b| a.0.total_cmp(&b.0)) else { return Vec::new() };
+    let Some((_, best)) = starts.min_by(|a, b| a.0.total_cmp(&b.0)) else {
+        return Vec::new();
+    };
     let mut values = vec![0.0; family.machine.joints.len()];
     for (drive, value) in drives.iter().zip(best) {
         values[drive.joint] = value;
@@ -50,7 +54,9 @@ pub fn beside(family: &Family, target: &Target, random: &mut impl Rng) -> Vec<Re
     let turn = pose.rotation.to_rotation_matrix();
     let mut widened = target.clone();
     let off = pose.translation.vector - target.xyz;
-    widened.xyz_within = target.xyz_within.zip_map(&off, |within, off| within.max(off.abs() + SPARE));
+    widened.xyz_within = target
+        .xyz_within
+        .zip_map(&off, |within, off| within.max(off.abs() + SPARE));
     let mut moved = target.clone();
     moved.xyz = pose.translation.vector;
     if let (Orientation::Near { rotation, within }, Orientation::Near { rotation: new, .. }) =
@@ -81,7 +87,13 @@ pub fn beside(family: &Family, target: &Target, random: &mut impl Rng) -> Vec<Re
 
 /// Proofs that the target is out of reach of the arm with one joint kept below its value in the
 /// posture, or above it. Each bears the digest of the arm with all its postures.
-fn narrowed(family: &Family, digest: [u8; 32], of: &Reachable, joint: usize, gap: f64) -> [Option<Proof>; 2] {
+fn narrowed(
+    family: &Family,
+    digest: [u8; 32],
+    of: &Reachable,
+    joint: usize,
+    gap: f64,
+) -> [Option<Proof>; 2] {
     [[0, 1], [1, 0]].map(|[kept, moved]| {
         let mut narrow = family.machine.clone();
         let limits = narrow.joints[joint].limits.as_mut()?;
@@ -127,19 +139,31 @@ pub fn gapped(family: &Family, digest: [u8; 32], of: &Reachable) -> Vec<Proof> {
 /// A proof mended for a target that it does not prove: every claim that does not follow is loosened
 /// to what the checker says does, every step that says nothing is left out, until no claim is left
 /// to loosen. Returns what the posture contradicts of what was accepted on the way.
-pub fn mended(checker: &Checker, mut proof: Proof, of: &Reachable, truth: &Truth) -> Option<String> {
+pub fn mended(
+    checker: &Checker,
+    mut proof: Proof,
+    of: &Reachable,
+    truth: &Truth,
+) -> Option<String> {
     proof.target.clone_from(&of.line);
     // Every round loosens or leaves out one of the steps.
     for _ in 0..2 * proof.items.len() {
         let result = checker.check(&proof, &of.line);
         if let Some(item) = truth.contradicts(&proof, accepted(&proof, &result)) {
-            return Some(format!("item {item} of a mended proof contradicts {}", of.line));
+            return Some(format!(
+                "item {item} of a mended proof contradicts {}",
+                of.line
+            ));
         }
         let Err(Rejection::Item { index, reason, .. }) = result else {
-            return result.is_ok().then(|| format!("a mended proof is accepted: {}", of.line));
+            return result
+                .is_ok()
+                .then(|| format!("a mended proof is accepted: {}", of.line));
         };
         let end = end_of(&proof.items, index);
-        let Item::Step(step) = &mut proof.items[index] else { return None };
+        let Item::Step(step) = &mut proof.items[index] else {
+            return None;
+        };
         match (&reason, step.claim) {
             (Reason::DoesNotFollow(_), Claim::Nothing) => return None,
             (Reason::DoesNotFollow(follows), _) => match span(follows) {
@@ -160,7 +184,10 @@ pub fn mended(checker: &Checker, mut proof: Proof, of: &Reachable, truth: &Truth
 
 /// `in [lo, hi]` with ends moved outward to whole units.
 fn span(follows: &str) -> Option<Span> {
-    let (lo, hi) = follows.strip_prefix("in [")?.strip_suffix(']')?.split_once(", ")?;
+    let (lo, hi) = follows
+        .strip_prefix("in [")?
+        .strip_suffix(']')?
+        .split_once(", ")?;
     let unit = |number: &str| -> Option<f64> { Some(number.parse::<f64>().ok()? * PICO as f64) };
     // The conversion is off by a few units of large numbers.
     Some(Span {

@@ -94,7 +94,11 @@ impl Truth {
 
     fn seen(&self, feature: Feature, from: &Isometry3<f64>) -> Option<Vector3<f64>> {
         let (vector, point) = self.feature(feature)?;
-        let origin = if point { from.translation.vector } else { Vector3::zeros() };
+        let origin = if point {
+            from.translation.vector
+        } else {
+            Vector3::zeros()
+        };
         Some(from.rotation.inverse() * (vector - origin))
     }
 
@@ -112,7 +116,8 @@ impl Truth {
 
     /// The quantity, if there is one of that name.
     fn value(&self, quantity: Quantity) -> Option<f64> {
-        let turning = |joint| nth(&self.values, joint).filter(|_| nth(&self.revolute, joint) == Some(&true));
+        let turning =
+            |joint| nth(&self.values, joint).filter(|_| nth(&self.revolute, joint) == Some(&true));
         Some(match quantity {
             Quantity::Variable(index) => *nth(&self.variables, index)?,
             Quantity::Value(joint) => *nth(&self.values, joint)?,
@@ -132,9 +137,9 @@ impl Truth {
                 let vector = self.seen(feature, nth(&self.after, joint)?)?;
                 vector.xy().norm_squared()
             }
-            Quantity::Along(feature, cone) => {
-                self.seen(feature, &self.tip)?.dot(&nth(&self.cones, cone)?[0])
-            }
+            Quantity::Along(feature, cone) => self
+                .seen(feature, &self.tip)?
+                .dot(&nth(&self.cones, cone)?[0]),
             Quantity::Aim(feature, cone) => {
                 let from = self.place(Place::Difference)?;
                 self.seen(feature, &from)?.dot(&nth(&self.cones, cone)?[1])
@@ -167,7 +172,8 @@ impl Truth {
                     inside = waiting.pop().unwrap_or(false);
                 }
                 Item::Step(step) if inside => {
-                    let Some(value) = step.quantity.and_then(|quantity| self.value(quantity)) else {
+                    let Some(value) = step.quantity.and_then(|quantity| self.value(quantity))
+                    else {
                         return Some(index);
                     };
                     let holds = match step.claim {
