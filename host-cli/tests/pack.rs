@@ -1,5 +1,7 @@
 //! Packing for the controller: table and image hold the same machine, and the summary is true.
 
+mod common;
+
 use balk::firmware::{Preset, firmware};
 use balk::pack::pack;
 use balk::read;
@@ -90,4 +92,32 @@ fn the_preset_is_the_smallest_that_holds() {
         "Workspace8",
     ];
     assert_eq!(names, wanted);
+}
+
+#[test]
+fn the_command_writes_both_forms_and_says_what_it_did() {
+    let folder = common::Folder::new("pack_command").with("m.toml", ORCHARD);
+    let run = folder.run(&["pack", "m.toml", "--source", "m.rs", "--image", "m.bin"]);
+    assert_eq!((run.status, run.err.as_str()), (0, ""));
+    for part in [
+        "machine      orchard picker, tip gripper",
+        "needs        Workspace6",
+        "wrote        image m.bin",
+    ] {
+        assert!(run.out.contains(part), "{part}: {}", run.out);
+    }
+    let written = std::path::Path::new(env!("CARGO_TARGET_TMPDIR")).join("pack_command");
+    let image = std::fs::read(written.join("m.bin")).unwrap();
+    assert!(balk_core::image::load::<6>(&image).is_ok());
+    assert!(
+        std::fs::read_to_string(written.join("m.rs"))
+            .unwrap()
+            .contains("MACHINE")
+    );
+    let run = folder.run(&["pack", "m.toml", "--tip", "camera"]);
+    assert_eq!(run.status, 4);
+    assert_eq!(
+        run.err,
+        "m.toml: tip: there is no \"camera\" (tips: gripper)\n"
+    );
 }

@@ -69,6 +69,9 @@ pub(super) enum Command {
         #[arg(long, requires = "proofs")]
         text: bool,
     },
+    /// Pack a machine for the controller: a table in Rust source, a binary image
+    #[command(after_help = format!("Example:\n  balk pack machine.toml --source src/machine.rs --image machine.bin\n\n{EXIT_STATUS}\n\nCaution:\n{CAUTION}"))]
+    Pack(PackInputs),
     /// Answer targets as the controller would: refused with a record, or passed
     #[command(after_help = format!("{EXIT_STATUS}\n\nCaution:\n{CAUTION}"))]
     Screen {
@@ -151,6 +154,25 @@ pub(super) struct CheckInputs {
     pub quiet: bool,
 }
 
+/// What `pack` takes.
+#[derive(Args, Clone, Debug)]
+pub(super) struct PackInputs {
+    /// Machine file (TOML); - reads standard input
+    pub machine: PathBuf,
+    /// Tip to pack the chain of; may be left out when the machine has one
+    #[arg(long, value_name = "NAME")]
+    pub tip: Option<String>,
+    /// Write Rust source with a constant table here
+    #[arg(long, value_name = "FILE")]
+    pub source: Option<PathBuf>,
+    /// Write the binary image that a controller loads at run time here
+    #[arg(long, value_name = "FILE")]
+    pub image: Option<PathBuf>,
+    /// Print nothing
+    #[arg(long, short)]
+    pub quiet: bool,
+}
+
 /// What `audit` takes.
 #[derive(Args, Clone, Debug)]
 pub(super) struct AuditInputs {
@@ -209,6 +231,7 @@ impl Arguments {
         let (machine, other, name) = match &self.command {
             Command::Audit(inputs) => (&inputs.machine, &inputs.log, "LOG"),
             Command::Check(inputs) => (&inputs.machine, &inputs.targets, "TARGETS"),
+            Command::Pack(_) => return Ok(self),
             Command::Decide { inputs, .. } | Command::Screen { inputs, .. } => {
                 (&inputs.machine, &inputs.targets, "TARGETS")
             }

@@ -5,6 +5,7 @@ mod arguments;
 mod audit;
 mod check;
 mod output;
+mod pack;
 mod progress;
 mod tally;
 
@@ -57,6 +58,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> Status {
     let ended = match arguments.command {
         Command::Audit(inputs) => audit::run(&inputs),
         Command::Check(inputs) => check::run(&inputs),
+        Command::Pack(inputs) => pack::run(&inputs),
         Command::Decide {
             inputs,
             nodes,
@@ -85,6 +87,8 @@ enum Failure {
     Defect(#[from] Defect),
     #[error("{folder}: {source}")]
     Folder { folder: String, source: io::Error },
+    #[error("the image does not load: {0}")]
+    Image(String),
     #[error("{file}: {source}")]
     Input { file: String, source: io::Error },
     #[error("{file}: {source}")]
@@ -93,6 +97,12 @@ enum Failure {
     Machine { file: String, source: PackError },
     #[error("standard output: {0}")]
     Output(io::Error),
+    #[error("{file}: tip: {} (tips: {names})", wanted.as_ref().map_or_else(|| "say which with --tip".to_owned(), |name| format!("there is no {name:?}")))]
+    Tip {
+        file: String,
+        wanted: Option<String>,
+        names: String,
+    },
     #[error("cannot start threads: {0}")]
     Threads(#[from] rayon::ThreadPoolBuildError),
 }
@@ -103,8 +113,12 @@ impl Failure {
             Failure::Defect(_)
             | Failure::Input { .. }
             | Failure::Log { .. }
-            | Failure::Machine { .. } => Status::Input,
-            Failure::Folder { .. } | Failure::Output(_) | Failure::Threads(_) => Status::Fault,
+            | Failure::Machine { .. }
+            | Failure::Tip { .. } => Status::Input,
+            Failure::Folder { .. }
+            | Failure::Image(_)
+            | Failure::Output(_)
+            | Failure::Threads(_) => Status::Fault,
         }
     }
 }

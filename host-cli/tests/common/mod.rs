@@ -49,6 +49,7 @@ impl Folder {
     }
 
     /// Runs the program here with `input` as standard input.
+    #[allow(dead_code, reason = "not every file of tests has an input")]
     pub fn run_with(&self, arguments: &[&str], input: &str) -> Run {
         let mut child = self
             .command(arguments)

@@ -24,7 +24,7 @@ pub struct Corpus {
     root: PathBuf,
     count: usize,
     /// What is not of the class it was written for.
-    wrong: Vec<String>,
+    pub wrong: Vec<String>,
 }
 
 impl Corpus {

@@ -5,7 +5,8 @@
 mod flaws;
 
 use super::{Corpus, Said, beside, hex, targets};
-use balk::prove::{Prover, Subject};
+use balk::evidence::{Evidence, NoProof};
+use balk::prove::Subject;
 use balk::read::{Line, machine, target};
 use balk_checker::{Checker, binary, text};
 use flaws::{ACCEPTED, BYTES, REJECTED, TEXT};
@@ -38,6 +39,8 @@ pub enum Change {
     GivenFor(&'static str),
     /// The proof says that it is for the target of that name, and is given for it.
     For(&'static str),
+    /// The machine's digest becomes another.
+    OtherMachine,
     /// The whole text becomes this.
     Whole(&'static str),
 }
@@ -85,6 +88,10 @@ fn changed(change: Change) -> (String, &'static str) {
         }
         Change::GivenFor(id) => (far, id),
         Change::For(id) => (base(&line(id)), id),
+        Change::OtherMachine => {
+            let digest = far.split_whitespace().nth(3).unwrap_or_default();
+            (far.replace(digest, &"ab".repeat(32)), "far")
+        }
         Change::Whole(text) => (text.to_owned(), "far"),
     }
 }
@@ -210,12 +217,11 @@ pub fn write(corpus: &mut Corpus) {
     write_proved(corpus);
 }
 
-/// What the prover writes for every target of the arm that it proves unreachable.
+/// What is shown as proof for every target of the arm that has one.
 fn write_proved(corpus: &mut Corpus) {
     let file = beside("arm.toml");
     let arm = machine(file.as_bytes(), "arm.toml").expect("well written");
-    let digest = Checker::new(&file, "cup").expect("well written").digest();
-    let prover = Prover::new(&arm, 0, digest);
+    let evidence = Evidence::new(&arm, 0, &file).expect("well written");
     for (number, (id, line)) in targets("arm").into_iter().enumerate() {
         let written = Line {
             number,
@@ -227,13 +233,16 @@ fn write_proved(corpus: &mut Corpus) {
             line: &line,
             search: [7; 32],
         };
-        let Ok(proof) = prover.prove(&subject, 2000) else {
-            continue;
-        };
-        let name = format!("arm-{id}");
-        let words = text::write(&proof).expect("the format holds it");
-        write_text(corpus, "accepted", &name, "arm", &id, &words);
-        let bytes = binary::write(&proof).expect("the format holds it");
-        write_bytes(corpus, "accepted", &name, "arm", &id, &bytes);
+        match evidence.prove(&subject) {
+            Err(NoProof::Unproved(_)) => {}
+            Err(fault) => corpus.wrong.push(format!("{id}: {fault}")),
+            Ok(proof) => {
+                let name = format!("arm-{id}");
+                let words = text::write(&proof).expect("the format holds it");
+                write_text(corpus, "accepted", &name, "arm", &id, &words);
+                let bytes = binary::write(&proof).expect("the format holds it");
+                write_bytes(corpus, "accepted", &name, "arm", &id, &bytes);
+            }
+        }
     }
 }

@@ -97,6 +97,12 @@ pub fn write(corpus: &mut Corpus) {
         "digest-of-another-chain",
         &with(&far, DIGEST, &[1; 8]),
     );
+    // The orientation alone is out of reach, and nothing but the rules asked for is used.
+    put("accepted", "target-everywhere-cones", &everywhere(&cones));
+    for (name, record) in [("far", &far), ("cones", &cones), ("near", &near)] {
+        let plain = with(record, RULES, &[0]);
+        put("accepted", &format!("rules-none-{name}"), &plain);
+    }
     put("accepted", "seal-of-nothing", &Chain::new().seal(0).bytes());
     let seal = Seal {
         next: 7,
@@ -133,6 +139,12 @@ fn with_steps(record: &[u8], steps: &[u8]) -> Vec<u8> {
     sealed(&body)
 }
 
+/// The record with a position box of all there is.
+fn everywhere(record: &[u8]) -> Vec<u8> {
+    let axis = [(-ONE).to_le_bytes(), ONE.to_le_bytes()].concat();
+    with(record, POSITION, &axis.repeat(3))
+}
+
 type Put<'a> = dyn FnMut(&str, &str, &[u8]) + 'a;
 
 fn rejected(put: &mut Put, far: &[u8], cones: &[u8], near: &[u8]) {
@@ -147,12 +159,6 @@ fn rejected(put: &mut Put, far: &[u8], cones: &[u8], near: &[u8]) {
             &format!("machine-one-bit-{name}"),
             &with(record, FINGERPRINT, &[bit]),
         );
-        let whole = [(-ONE).to_le_bytes(), ONE.to_le_bytes()].concat().repeat(3);
-        put(
-            &format!("target-everywhere-{name}"),
-            &with(record, POSITION, &whole),
-        );
-        put(&format!("rules-none-{name}"), &with(record, RULES, &[0]));
         // A tree that the core does not make.
         put(
             &format!("tree-one-cut-more-{name}"),
@@ -163,6 +169,10 @@ fn rejected(put: &mut Put, far: &[u8], cones: &[u8], near: &[u8]) {
             &format!("tree-empty-range-{name}"),
             &with_steps(&with(record, SPLITS, &[2, 0]), &[3, 15, 15]),
         );
+    }
+    for (name, record) in [("far", far), ("near", near)] {
+        let everywhere = everywhere(record);
+        put(&format!("target-everywhere-{name}"), &everywhere);
     }
     put(
         "position-one-axis-free",

@@ -343,7 +343,9 @@ impl<'a> Case<'a> {
             let [theirs, ours] = tips.map(|tip| format!("name = {tip:?}"));
             other.text.replace(&theirs, &ours)
         });
-        let others = others.filter(|other| other != text).map(|other| (other, false));
+        let others = others
+            .filter(|other| other != text)
+            .map(|other| (other, false));
         let mut row = Row {
             name: "another machine",
             ..Row::default()
