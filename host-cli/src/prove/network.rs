@@ -65,6 +65,11 @@ pub(super) struct Network<'a> {
 }
 
 const AXES: [Part; 3] = [Part::X, Part::Y, Part::Z];
+/// A coefficient that small may be zero in truth; leaving it out changes less than is allowed for
+/// rounding.
+const TINY: f64 = 1e-15;
+/// The same for the rotations of links, whose relations allow for 10^-12.
+const TINY_TURN: f64 = 1e-13;
 
 fn is_point(feature: Feature) -> bool {
     matches!(feature, Feature::Origin(_) | Feature::Tip)
@@ -188,7 +193,7 @@ impl<'a> Network<'a> {
     ) {
         let terms = terms
             .into_iter()
-            .filter(|(factor, ..)| *factor != 0.0)
+            .filter(|(factor, ..)| factor.abs() > TINY)
             .map(|(factor, a, b)| Term {
                 factor,
                 a: self.quantity(a),
@@ -364,7 +369,9 @@ impl<'a> Network<'a> {
         let point = is_point(f);
         let (origin, rotation) = (
             if point { link.origin } else { Vector3::zeros() },
-            *link.rotation.matrix(),
+            link.rotation
+                .matrix()
+                .map(|r| if r.abs() < TINY_TURN { 0.0 } else { r }),
         );
         let slack = if point {
             link.shift + link.turn * self.reach
