@@ -226,10 +226,20 @@ pub fn test(
     simplex: &mut NodeSimplex,
     pivots: u16,
 ) -> Tested {
+    examine::<true>(network, spans, simplex, pivots)
+}
+
+/// The node test; without `ROWS` the linear program is not compiled in.
+fn examine<const ROWS: bool>(
+    network: &mut Network,
+    spans: &mut Spans,
+    simplex: &mut NodeSimplex,
+    pivots: u16,
+) -> Tested {
     if let Err(empty) = network.propagate(spans) {
         return Tested::Bounds(empty);
     }
-    if pivots == 0 {
+    if !ROWS || pivots == 0 {
         return Tested::Open(Relaxed::Feasible);
     }
     match relax(network, spans, simplex, pivots.into()) {
@@ -243,6 +253,31 @@ pub fn test(
 /// Takes at most `splits` node tests and twice as many propagations per cut and candidate; no
 /// heap, no recursion.
 pub fn screen<'w, const N: usize, const CELLS: usize, const PARTS: usize>(
+    machine: &Machine<N>,
+    target: &Target,
+    options: &Options,
+    workspace: &'w mut Workspace<CELLS, PARTS>,
+) -> Verdict<'w> {
+    refuse::<true, N, CELLS, PARTS>(machine, target, options, workspace)
+}
+
+/// The same without the code of the linear program, for the smallest controllers.
+///
+/// Answers as [`screen`] does with no pivots. Options that ask for pivots are beyond its capacity:
+/// every target passes.
+pub fn screen_by_bounds<'w, const N: usize, const CELLS: usize, const PARTS: usize>(
+    machine: &Machine<N>,
+    target: &Target,
+    options: &Options,
+    workspace: &'w mut Workspace<CELLS, PARTS>,
+) -> Verdict<'w> {
+    if options.pivots > 0 {
+        return Verdict::Passed(Reason::Capacity);
+    }
+    refuse::<false, N, CELLS, PARTS>(machine, target, options, workspace)
+}
+
+fn refuse<'w, const ROWS: bool, const N: usize, const CELLS: usize, const PARTS: usize>(
     machine: &Machine<N>,
     target: &Target,
     options: &Options,
@@ -265,7 +300,7 @@ pub fn screen<'w, const N: usize, const CELLS: usize, const PARTS: usize>(
     }
     let goal = Goal::new(target);
     let mut network = Network::new(chain, &goal, options.rules, cells);
-    match walk(&mut network, options, parts, steps, simplex) {
+    match walk::<ROWS, PARTS>(&mut network, options, parts, steps, simplex) {
         // Every part was closed by a proof that `walk` consumed.
         Ok(()) => Verdict::Refused(Refusal {
             steps,
@@ -276,7 +311,7 @@ pub fn screen<'w, const N: usize, const CELLS: usize, const PARTS: usize>(
 }
 
 /// Walks the tree of parts; `Ok` once every one has been closed with proof.
-fn walk<const PARTS: usize>(
+fn walk<const ROWS: bool, const PARTS: usize>(
     network: &mut Network,
     options: &Options,
     parts: &mut Vec<Part, PARTS>,
@@ -298,7 +333,7 @@ fn walk<const PARTS: usize>(
             }
             Part::Open(waiting) => waiting.spans(variables),
         };
-        let open = match test(network, &mut spans, simplex, options.pivots) {
+        let open = match examine::<ROWS>(network, &mut spans, simplex, options.pivots) {
             Tested::Bounds(Empty { .. }) => {
                 steps.push(Step::Bounds).map_err(full)?;
                 continue;

@@ -100,6 +100,8 @@ EXEMPT = [
     (_NETWORK, "feature * self.stride() + joint", 2, INDEX),
     (_NETWORK, "span.arc.negate()", 1, CALL),
     (_NETWORK, "arc.plus(step)", 1, CALL),
+    (_BRANCH, "order[at - 1]", 1, INDEX),
+    (_BRANCH, "order.swap(at - 1, at)", 1, INDEX),
     (_BRANCH, "quarters += 1", 1, "at most three: the loop's own condition"),
     (_BRANCH, ".sum::<u64>()", 1, SUM),
     (_BRANCH, "/ ONE as f32", 1, FLOAT),

@@ -5,7 +5,11 @@ pub mod cases;
 pub mod spherical;
 
 use balk_core::machine::Machine;
-use balk_core::screen::{Options, Verdict, Workspace, screen};
+#[cfg(not(feature = "propagation"))]
+use balk_core::screen::screen;
+#[cfg(feature = "propagation")]
+use balk_core::screen::screen_by_bounds as screen;
+use balk_core::screen::{Options, Verdict, Workspace};
 use balk_core::target::Target;
 
 /// The entry whose stack is bounded and observed: [`screen`] alone, in a frame of its own.

@@ -70,6 +70,19 @@ impl Direction {
     }
 }
 
+/// Sorts sizes with their variables, the widest first, equal ones as they were: by insertion, for a
+/// handful of them and without recursion.
+fn widest_first(order: &mut [(u32, usize)]) {
+    for end in 1..order.len() {
+        for at in (1..=end).rev() {
+            if order[at - 1].0 >= order[at].0 {
+                break;
+            }
+            order.swap(at - 1, at);
+        }
+    }
+}
+
 impl Network<'_> {
     /// The cube of the sum of the widths: what is left to do in a node, roughly.
     ///
@@ -89,6 +102,7 @@ impl Network<'_> {
     ///
     /// A variable whose two parts are both empty is taken at once. Cost: two propagations per
     /// candidate.
+    #[inline(never)]
     pub fn branch(&mut self, spans: &Spans, candidates: usize) -> Branch {
         let mut order: heapless::Vec<(u32, usize), { super::MOST_JOINTS }> = spans
             .iter()
@@ -96,7 +110,7 @@ impl Network<'_> {
             .enumerate()
             .map(|(v, (span, variable))| (span.size(variable.motion), v))
             .collect();
-        order.sort_unstable_by(|a, b| b.0.cmp(&a.0).then(a.1.cmp(&b.1)));
+        widest_first(&mut order);
         let mut best: Option<(f32, Branch)> = None;
         for &(size, variable) in order.iter().take(candidates) {
             // Narrower than about 2^-26 of a turn, or of the reach, a cut tells nothing.

@@ -3,7 +3,7 @@
 mod common;
 
 use balk_checker::proof::Claim;
-use balk_checker::{Reason, Rejection, Report, TargetError};
+use balk_checker::{Checker, Reason, Rejection, Report, TargetError};
 use common::{HEADER, MACHINE, STEPS, TARGET, checker, proof};
 
 /// Why the proof with `items` is refused.
@@ -164,6 +164,33 @@ fn the_root_must_cover_the_limits() {
     assert_eq!(refusal(&small, STEPS), Rejection::Root(2));
     let few = HEADER.lines().take(3).map(|line| format!("{line}\n"));
     assert_eq!(refusal(&few.collect::<String>(), STEPS), Rejection::Count);
+}
+
+/// A free joint that two others follow at a half and a quarter of its turns: the machine repeats
+/// itself after four, not eight.
+#[test]
+fn a_root_without_limits_must_be_as_long_as_the_machine_repeats_itself() {
+    let joint = |name: &str, more: &str| {
+        format!("[[joint]]\nname = \"{name}\"\nkind = \"revolute\"\n{more}")
+    };
+    let follows = |ratio: &str| format!("follows = {{ joint = \"a\", ratio = {ratio} }}\n");
+    let machine = [
+        joint("a", ""),
+        joint("b", &format!("xyz = [0.1, 0, 0]\n{}", follows("0.5"))),
+        joint("c", &format!("xyz = [0.1, 0, 0]\n{}", follows("0.25"))),
+        "[[tip]]\nname = \"cup\"\nxyz = [0.1, 0, 0]\n".to_owned(),
+    ]
+    .concat();
+    let checker = Checker::new(&machine, "cup").expect("well written");
+    let frames = "frame 1 1 0 0 0 0\nframe 2 1 0 0 0 0\nframe 3 1 0 0 0 0\n";
+    let judge = |root: &str| {
+        let mut proof = proof(&format!("{frames}root 1 {root}\n"), "");
+        proof.machine = checker.digest();
+        checker.check(&proof, TARGET)
+    };
+    // Four turns are 25.132741228718...
+    assert_eq!(judge("-12 13.132741228718"), Err(Rejection::Root(1)));
+    assert_eq!(judge("-12 13.132741228719"), Err(Rejection::Unclosed(1)));
 }
 
 #[test]

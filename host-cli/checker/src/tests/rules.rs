@@ -319,3 +319,113 @@ fn relations_are_tight() {
         );
     }
 }
+
+/// What a rule reads, narrowed to a billionth about the truth.
+fn read_closely<'a>(
+    problem: &'a Problem<'a>,
+    world: &World,
+    root: &[Interval],
+    rule: &Rule,
+) -> Known<'a> {
+    let mut known = Known::new(problem, root);
+    for quantity in inputs(problem, rule) {
+        let truth = world.truth(quantity);
+        let near = Interval::new(to_grains(truth - 1e-9), to_grains(truth + 1e-9));
+        let bound = known.get(quantity).meet(&near);
+        if !bound.is_empty() {
+            let _ = known.narrow(quantity, bound);
+        }
+    }
+    known
+}
+
+/// The rules about directions give a narrow interval on both sides of a joint.
+#[test]
+fn directions_are_tight() {
+    let mut narrow: BTreeMap<(&str, Option<Place>), u32> = BTreeMap::new();
+    for seed in (0..200).filter(|seed| !is_loose(*seed)) {
+        with_problem(seed, |world, problem, root| {
+            let joints = (1..=problem.joints() as u8).filter(|joint| problem.is_revolute(*joint));
+            for joint in joints {
+                let (before, after) = (Place::Before(joint), Place::After(joint));
+                let view = |place, part| Quantity::View(Feature::Tip, place, part);
+                let mut cases = vec![
+                    (
+                        "angle",
+                        Rule::Angle(joint, Feature::Tip),
+                        Quantity::Value(joint),
+                    ),
+                    (
+                        "angle.c",
+                        Rule::AngleOfCircle(joint),
+                        Quantity::Value(joint),
+                    ),
+                ];
+                for place in [before, after] {
+                    for part in [Part::X, Part::Y] {
+                        let rule = Rule::Sector(joint, Feature::Tip);
+                        cases.push(("sector", rule, view(place, part)));
+                    }
+                }
+                for (name, rule, quantity) in cases {
+                    let known = read_closely(problem, world, root, &rule);
+                    match confine(problem, &known, &rule, Some(quantity)) {
+                        Ok(range) => {
+                            assert!(holds(&range, world.truth(quantity)), "{seed} {rule:?}");
+                            let side = match quantity {
+                                Quantity::View(_, Place::Before(_), _) => Some(Place::Before(0)),
+                                Quantity::View(..) => Some(Place::After(0)),
+                                _ => None,
+                            };
+                            let is_narrow = range.width() < to_grains(1e-4);
+                            *narrow.entry((name, side)).or_default() += u32::from(is_narrow);
+                        }
+                        Err(reason) => assert_eq!(reason, Reason::TouchesZero, "{seed} {rule:?}"),
+                    }
+                }
+            }
+        });
+    }
+    assert_eq!(narrow.len(), 4, "{narrow:?}");
+    assert!(narrow.values().all(|used| *used >= 20), "{narrow:?}");
+}
+
+/// Asked about any quantity at all, a rule says the truth or nothing.
+#[test]
+fn rules_do_not_speak_of_what_they_do_not_bound() {
+    let mut answers = [0; 2];
+    for seed in 0..150 {
+        with_problem(seed, |world, problem, root| {
+            let mut dice = Dice(seed + 5);
+            for number in (0..NAMES.len() as u8).cycle().take(4 * NAMES.len()) {
+                let mut arguments = Arguments {
+                    dice: &mut dice,
+                    joints: problem.joints() as u64,
+                    cones: problem.wanted.cones.len() as u64,
+                };
+                let rule = grammar::rule(number, &mut arguments).expect("a rule");
+                for _ in 0..4 {
+                    let (feature, place) = (arguments.feature(), arguments.place());
+                    let (feature, place) = (feature.expect("one"), place.expect("one"));
+                    let part = [Part::X, Part::Y, Part::Z, Part::Square];
+                    let part = part[arguments.dice.below(4) as usize];
+                    let quantity = Quantity::View(feature, place, part);
+                    if !problem.has(quantity) {
+                        continue;
+                    }
+                    let known = read_closely(problem, world, root, &rule);
+                    let said = confine(problem, &known, &rule, Some(quantity));
+                    answers[usize::from(said.is_ok())] += 1;
+                    if let Ok(range) = said {
+                        let truth = world.truth(quantity);
+                        assert!(
+                            holds(&range.meet(&known.get(quantity)), truth),
+                            "{seed} {rule:?} {quantity:?} {truth}"
+                        );
+                    }
+                }
+            }
+        });
+    }
+    assert!(answers.iter().all(|count| *count > 200), "{answers:?}");
+}

@@ -46,7 +46,7 @@ pub enum Edit {
     Feature,
     /// The kind of a claim.
     Claim,
-    /// A multiplier of a sum.
+    /// A multiplier of a sum, or of a relation made a sum of one.
     Multiplier,
     /// A step, left out.
     StepGone,
@@ -133,7 +133,10 @@ impl Edit {
                 "kind of claim",
                 Some("the half of the claim that is needed"),
             ),
-            Edit::Multiplier => ("multiplier", Some("combinations with room to spare")),
+            Edit::Multiplier => (
+                "multiplier, or a sum of one",
+                Some("a sum that says the same"),
+            ),
             Edit::StepGone => ("step left out", Some("the bounds without it suffice")),
             Edit::StepTwice => ("step twice", Some("what held still holds")),
             Edit::StepsExchanged => ("steps exchanged", Some("they do not need each other")),
@@ -287,18 +290,14 @@ impl Edit {
                 };
                 new.quantity = other.quantity;
             }
-            Edit::Multiplier => {
-                let Rule::Sum(list) = &mut new.rule else {
-                    return None;
-                };
-                let term = random.random_range(0..list.len());
-                let by = if random.random() {
-                    sign(random)
-                } else {
-                    by(random)
-                };
-                list[term].0 = list[term].0.checked_add(by)?;
-            }
+            Edit::Multiplier => match &mut new.rule {
+                Rule::One(relation) => new.rule = Rule::Sum(vec![(by(random), *relation)]),
+                Rule::Sum(list) if !list.is_empty() => {
+                    let term = random.random_range(0..list.len());
+                    list[term].0 = list[term].0.checked_add(by(random))?;
+                }
+                _ => return None,
+            },
             _ => return reworded(proof, step, |words| self.word(words, random)),
         }
         Some(new)

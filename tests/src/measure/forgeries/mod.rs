@@ -17,7 +17,7 @@ use balk::model::Target;
 use balk::prove::Subject;
 use balk::search::Verdict;
 use balk::write::target_line;
-use balk_checker::proof::{Item, PICO, Proof};
+use balk_checker::proof::{Item, PICO, Proof, Span};
 use balk_checker::{Checker, binary};
 use edits::{Edit, end_of};
 use rand::SeedableRng;
@@ -115,7 +115,8 @@ impl Arms {
         )
     }
 
-    /// That many proofs, of all arms and kinds of target in turn.
+    /// That many proofs, of all arms and kinds of target in turn. Short ones seldom have splits, so
+    /// every third is split once more in the middle of a span, with the same steps on both sides.
     pub fn cases(&self, count: usize, seed: u64) -> Vec<Case<'_>> {
         let kinds = self.0.len() * Kind::ALL.len();
         let each = count.div_ceil(kinds);
@@ -139,6 +140,9 @@ impl Arms {
             all.extend(cases.iter_mut().filter_map(Vec::pop));
         }
         all.truncate(count);
+        for (number, case) in all.iter_mut().enumerate().skip(2).step_by(3) {
+            case.split(number);
+        }
         all
     }
 }
@@ -182,6 +186,21 @@ impl<'a> Case<'a> {
             line,
             beside,
         })
+    }
+
+    /// Splits the span of a variable in its middle.
+    fn split(&mut self, number: usize) {
+        let variable = number % self.proof.root.len();
+        let Span { lo, hi } = self.proof.root[variable];
+        let split = Item::Split {
+            variable: variable as u8 + 1,
+            at: lo + (hi - lo) / 2,
+        };
+        let items = &self.proof.items;
+        self.proof.items = [&[split], &items[..], items].concat();
+        self.bytes = binary::write(&self.proof).expect("the format holds it");
+        let valid = self.checker.check(&self.proof, &self.line);
+        assert!(valid.is_ok(), "{valid:?}");
     }
 
     /// What is wrong if `forged` is accepted although it may be a proof: it is of something else,

@@ -8,6 +8,7 @@ use balk::kinematics::{angle_between, meets, tip_pose, turn_between};
 use balk::model::{Orientation, Target};
 use balk::posture::Linkage;
 use balk::prove::{Prover, Subject};
+use balk::search::{Solver, Verdict};
 use balk::write::target_line;
 use balk_checker::proof::{Claim, Item, PICO, Proof, Span};
 use balk_checker::{Checker, Reason, Rejection};
@@ -19,7 +20,9 @@ const SPARE: f64 = 1e-6;
 /// Starts of the search for a posture.
 const STARTS: usize = 8;
 /// Parts that a proof of narrower limits may look at.
-const PARTS: u64 = 40;
+const PARTS: u64 = 8;
+/// How far the narrower limits stay away from the posture, radians or metres.
+const GAP: f64 = 0.3;
 
 /// A target that a posture meets.
 pub struct Reachable {
@@ -87,25 +90,25 @@ pub fn beside(family: &Family, target: &Target, random: &mut impl Rng) -> Vec<Re
 
 /// Proofs that the target is out of reach of the arm with one joint kept below its value in the
 /// posture, or above it. Each bears the digest of the arm with all its postures.
-fn narrowed(
-    family: &Family,
-    digest: [u8; 32],
-    of: &Reachable,
-    joint: usize,
-    gap: f64,
-) -> [Option<Proof>; 2] {
+fn narrowed(family: &Family, digest: [u8; 32], of: &Reachable, joint: usize) -> [Option<Proof>; 2] {
     [[0, 1], [1, 0]].map(|[kept, moved]| {
         let mut narrow = family.machine.clone();
         let limits = narrow.joints[joint].limits.as_mut()?;
-        let end = of.values[joint] + if moved == 1 { -gap } else { gap };
+        let end = of.values[joint] + if moved == 1 { -GAP } else { GAP };
         if (end - limits[kept]) * (limits[moved] - limits[kept]) <= 0.0 {
             return None;
         }
         limits[moved] = end;
+        // Most are still within reach; the search says so sooner than the prover gives up.
+        let solver = Solver::new(&narrow, 0).ok()?;
+        let Verdict::Unreachable { proof: search } = solver.decide(&of.target, PARTS).verdict
+        else {
+            return None;
+        };
         let subject = Subject {
             target: &of.target,
             line: &of.line,
-            search: [0; 32],
+            search,
         };
         Prover::new(&narrow, 0, digest).prove(&subject, PARTS).ok()
     })
@@ -116,22 +119,20 @@ fn narrowed(
 pub fn gapped(family: &Family, digest: [u8; 32], of: &Reachable) -> Vec<Proof> {
     let mut forged = Vec::new();
     for (variable, drive) in family.solver.pack.drives.iter().enumerate() {
-        let both = [0.1, 0.4].map(|gap| narrowed(family, digest, of, drive.joint, gap));
-        for [lower, upper] in both {
-            if let (Some(lower), Some(upper)) = (&lower, &upper) {
-                let mut joined = lower.clone();
-                joined.root[variable].hi = upper.root[variable].hi;
-                let split = Item::Split {
-                    variable: variable as u8 + 1,
-                    at: lower.root[variable].hi,
-                };
-                joined.items.insert(0, split);
-                joined.items.extend(upper.items.iter().cloned());
-                forged.push(joined);
-            }
-            forged.extend(lower);
-            forged.extend(upper);
+        let [lower, upper] = narrowed(family, digest, of, drive.joint);
+        if let (Some(lower), Some(upper)) = (&lower, &upper) {
+            let mut joined = lower.clone();
+            joined.root[variable].hi = upper.root[variable].hi;
+            let split = Item::Split {
+                variable: variable as u8 + 1,
+                at: lower.root[variable].hi,
+            };
+            joined.items.insert(0, split);
+            joined.items.extend(upper.items.iter().cloned());
+            forged.push(joined);
         }
+        forged.extend(lower);
+        forged.extend(upper);
     }
     forged
 }
