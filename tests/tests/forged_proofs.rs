@@ -16,14 +16,11 @@ fn no_forged_proof_is_taken_for_a_proof() {
         );
         assert_eq!(lost, None, "{}: {} wrong", row.name, row.wrong.len());
         assert!(row.tried > 0, "nothing tried: {}", row.name);
-        assert!(
-            row.accepted < row.tried || row.name == "search digest",
-            "{}",
-            row.name
-        );
     }
     let tried: u64 = rows.iter().map(|row| row.tried).sum();
     let turned: u64 = rows.iter().map(|row| row.turned).sum();
+    let accepted: u64 = rows.iter().map(|row| row.accepted).sum();
+    assert!(accepted > 0 && 4 * accepted < turned, "{accepted}");
     assert!(tried > 50_000 && turned > 5_000, "{tried}, {turned}");
 }
 

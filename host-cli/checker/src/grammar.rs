@@ -1,6 +1,6 @@
 //! What follows what in an item, common to both ways of writing: `FORMAT.md`, sections 4, 5 and 8.
 
-use crate::proof::{Claim, Feature, Place, Relation, Rule, Step};
+use crate::proof::{Claim, Feature, Place, Quantity, Relation, Rule, Step};
 
 /// Names of the relations and then of the other rules; the place is the number.
 pub const NAMES: [&str; 51] = [
@@ -278,9 +278,22 @@ pub fn rule_arguments(rule: &Rule, to: &mut impl Writer) -> Result<(), Malformed
     }
 }
 
-/// Refuses a step that lacks a quantity it needs.
+/// Refuses a step that lacks a quantity it needs, or counts one from zero.
 pub fn need_quantity(step: &Step) -> Result<(), Malformed> {
+    use Quantity as Q;
     match (&step.quantity, &step.rule, &step.claim) {
+        (
+            Some(
+                Q::Variable(0)
+                | Q::Value(0)
+                | Q::Cosine(0)
+                | Q::Sine(0)
+                | Q::Radius(_, 0)
+                | Q::Along(_, 0)
+                | Q::Aim(_, 0),
+            ),
+            ..,
+        ) => Err(Malformed::Number),
         (Some(_), ..) | (None, Rule::Sum(_), Claim::Nothing) => Ok(()),
         _ => Err(Malformed::Quantity),
     }
