@@ -92,6 +92,10 @@ fn a_bound_may_be_weaker_but_not_stronger() {
 
 #[test]
 fn rules_that_do_not_apply() {
+    for relation in ["length 3+ t", "length 2+ o3"] {
+        let items = format!("step t@1-.s >= 0 by {relation}\n");
+        assert_eq!(reason(&items), Reason::NoSuch, "{relation}");
+    }
     assert_eq!(reason("step t@3+.x <= 0 by out.x 2 t\n"), Reason::NoSuch);
     assert_eq!(reason("step t@2+.x <= 0 by out.x 3 t\n"), Reason::NoSuch);
     assert_eq!(reason("step t@2-.x <= 0 by slide.x 2 t\n"), Reason::NoSuch);

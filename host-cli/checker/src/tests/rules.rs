@@ -429,3 +429,43 @@ fn rules_do_not_speak_of_what_they_do_not_bound() {
     }
     assert!(answers.iter().all(|count| *count > 200), "{answers:?}");
 }
+
+/// The largest component of a tip axis that an orientation within an angle allows is that of the
+/// nearest direction on the cone, or one inside of it.
+#[test]
+fn spread_is_the_nearest_direction() {
+    let mut cases = [0; 2];
+    for seed in 0..100 {
+        with_problem(seed, |_, problem, root| {
+            let Some((rotation, angle)) = &problem.wanted.orientation else {
+                return;
+            };
+            let known = Known::new(problem, root);
+            let (cosine, sine) = (to_float(&angle.cosine.lo), to_float(&angle.sine.hi));
+            for axis in 0..3u8 {
+                let feature = Feature::TipAxis(axis);
+                for (row, part) in [Part::X, Part::Y, Part::Z].into_iter().enumerate() {
+                    let nominal = to_float(&rotation[row][usize::from(axis)].lo);
+                    let most = |nominal: f64| {
+                        if nominal >= cosine {
+                            1.0
+                        } else {
+                            nominal * cosine + (1.0 - nominal * nominal).max(0.0).sqrt() * sine
+                        }
+                    };
+                    let quantity = Quantity::View(feature, Place::Difference, part);
+                    let rule = Rule::Spread(feature);
+                    let range =
+                        confine(problem, &known, &rule, Some(quantity)).expect("it applies");
+                    let expected = [-most(-nominal), most(nominal)];
+                    for (found, expected) in [range.lo, range.hi].iter().zip(expected) {
+                        let off = (to_float(found) - expected).abs();
+                        assert!(off < 1e-6, "{seed} {quantity:?}: {off}");
+                    }
+                    cases[usize::from(nominal >= cosine)] += 1;
+                }
+            }
+        });
+    }
+    assert!(cases.iter().all(|count| *count > 50), "{cases:?}");
+}

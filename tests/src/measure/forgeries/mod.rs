@@ -197,7 +197,8 @@ impl<'a> Case<'a> {
             at: lo + (hi - lo) / 2,
         };
         let items = &self.proof.items;
-        self.proof.items = [&[split], &items[..], items].concat();
+        // One step twice, so that the halves differ.
+        self.proof.items = [&[split], &items[..1], &items[..], items].concat();
         self.bytes = binary::write(&self.proof).expect("the format holds it");
         let valid = self.checker.check(&self.proof, &self.line);
         assert!(valid.is_ok(), "{valid:?}");
