@@ -52,6 +52,21 @@ fn holds_on_both_sides_of_a_split() {
 }
 
 #[test]
+fn what_is_found_before_a_split_holds_on_both_sides() {
+    let last = STEPS.lines().last().expect("steps");
+    let shared = STEPS.strip_suffix(&format!("{last}\n")).expect("the last");
+    let items = format!("{shared}split 1 at 0.5\n{last}\n{last}\n");
+    let report = checker().check(&proof(HEADER, &items), TARGET);
+    assert_eq!(
+        report,
+        Ok(Report {
+            steps: 12,
+            splits: 1
+        })
+    );
+}
+
+#[test]
 fn what_one_side_finds_is_forgotten_on_the_other() {
     let last = STEPS.lines().last().expect("steps");
     let items = format!("split 2 at 0\n{STEPS}{last}\n");
