@@ -26,9 +26,8 @@
 use crate::fixed::{Arc, Direction, Interval, ONE, ONE_SQUARED, Product};
 use crate::machine::{Joint, Machine, Motion, Placement, Variable};
 use crate::propagate::MOST_JOINTS;
-use crate::record::fingerprint;
+use crate::record::{CHECKSUM, fingerprint};
 use core::fmt;
-use crc::{CRC_32_ISCSI, Crc, Table};
 use heapless::Vec;
 
 /// Version of the layout.
@@ -54,8 +53,6 @@ const CHECKSUM_BYTES: usize = 4;
 const SQUARE_SLACK: i64 = 1 << 12;
 /// How far it stays below one, so that sums of eight products fit: packing leaves more.
 const SQUARE_ROOM: i64 = 1 << 40;
-
-static CHECKSUM: Crc<u32, Table<1>> = Crc::<u32, Table<1>>::new(&CRC_32_ISCSI);
 
 /// Why bytes are no image of a machine.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]

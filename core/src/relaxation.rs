@@ -59,7 +59,6 @@ impl Rows<'_, '_> {
 
     /// The angle between wanted and actual orientation, linearised at the middle posture: the
     /// trace, the sine in the direction of the turn, or the cosine of a cone.
-    #[inline(never)]
     fn turn_limit(&self, number: usize) -> Vec<Linear, 3> {
         let mut rows = Vec::new();
         match self.network.goal() {
@@ -156,8 +155,6 @@ pub enum Relaxed {
 ///
 /// # Errors
 /// Why there is no proof. It does not mean that a posture exists.
-// A frame of its own, so that propagation does not carry its working memory.
-#[inline(never)]
 pub fn relax(
     network: &Network,
     spans: &mut Spans,
@@ -221,7 +218,6 @@ impl Program<'_> {
     }
 
     /// Lets the kernel judge the simplex's contradiction over the present boxes.
-    #[inline(never)]
     fn confirm(&self) -> Option<Refuted> {
         let mut multipliers = [0i32; MOST_ROWS];
         self.simplex.multipliers(&mut multipliers);
@@ -275,7 +271,6 @@ impl Program<'_> {
 
 impl Rows<'_, '_> {
     /// The group not yet in the program whose rows the present point misses most.
-    #[inline(never)]
     fn most_violated(
         &self,
         simplex: &NodeSimplex,

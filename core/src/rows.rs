@@ -101,7 +101,6 @@ fn about_axis(d: Direction) -> Matrix {
 
 impl Expansion {
     /// Expands about the middle of a node that was propagated last.
-    #[inline(never)]
     pub fn new(network: &Network, spans: &Spans) -> Expansion {
         let chain = network.chain();
         let mut expansion = Expansion {

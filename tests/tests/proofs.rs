@@ -4,6 +4,7 @@
 use balk::evidence::Evidence;
 use balk::model::Machine;
 use balk::prove::Subject;
+use balk::read::Line;
 use balk::search::{Solver, Verdict};
 use balk::write::{machine_file, target_line};
 use balk_tests::families::{Family, Kind};
@@ -44,6 +45,35 @@ fn unreachable_targets_of_the_arms_are_proved() {
         }
         assert!(proved > 5, "{}: only {proved}", family.name);
     }
+}
+
+/// Every way to write a target, angles at their ends: the corpus keeps proofs of them, this asks for
+/// new ones.
+#[test]
+fn unreachable_targets_of_the_corpus_are_proved() {
+    let text = include_str!("../corpus/arm.toml");
+    let machine = balk::read::machine(text.as_bytes(), "arm.toml").expect("well formed");
+    let solver = Solver::new(&machine, 0).expect("can be packed");
+    let evidence = Evidence::new(&machine, 0, text).expect("well formed");
+    let mut proved = 0;
+    for (number, line) in (1..).zip(include_str!("../corpus/arm.jsonl").lines()) {
+        let read = Line {
+            number,
+            bytes: Some(line.as_bytes().to_vec()),
+        };
+        let target = balk::read::target(&read, "arm.jsonl", &machine).expect("well formed");
+        if let Verdict::Unreachable { proof } = solver.decide(&target, 400).verdict {
+            let subject = Subject {
+                target: &target,
+                line,
+                search: proof,
+            };
+            let proof = evidence.prove(&subject);
+            assert!(proof.is_ok(), "{line}: {:?}", proof.err());
+            proved += 1;
+        }
+    }
+    assert!(proved > 10, "only {proved}");
 }
 
 /// Turning, sliding, fixed and following joints, tolerances, every kind of target.

@@ -102,7 +102,6 @@ impl Network<'_> {
     ///
     /// A variable whose two parts are both empty is taken at once. Cost: two propagations per
     /// candidate.
-    #[inline(never)]
     pub fn branch(&mut self, spans: &Spans, candidates: usize) -> Branch {
         let mut order: heapless::Vec<(u32, usize), { super::MOST_JOINTS }> = spans
             .iter()

@@ -87,5 +87,5 @@ const SEAL_KIND: u8 = 0xb2;
 const BOUNDS_STEP: u8 = 14;
 const ROWS_STEP: u8 = 15;
 
-static CHECKSUM: Crc<u32, Table<1>> = Crc::<u32, Table<1>>::new(&CRC_32_ISCSI);
+pub(crate) static CHECKSUM: Crc<u32, Table<1>> = Crc::<u32, Table<1>>::new(&CRC_32_ISCSI);
 static DIGEST: Crc<u64, Table<1>> = Crc::<u64, Table<1>>::new(&CRC_64_XZ);

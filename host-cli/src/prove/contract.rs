@@ -1,10 +1,8 @@
 //! What each constraint allows of each of its quantities.
 
 use super::interval::{Interval, directions};
-use super::network::{Constraint, Equation, Network, Special, Wanted};
+use super::network::{AXES, Constraint, Equation, Network, Special, Wanted};
 use balk_checker::proof::{Feature, Part, Place, Quantity};
-
-const AXES: [Part; 3] = [Part::X, Part::Y, Part::Z];
 
 /// Bounds of `D . x` over unit vectors D within an angle of a unit vector u with `u . x` in
 /// `nominal`; `square` bounds `x . x`.

@@ -64,14 +64,16 @@ pub(super) struct Network<'a> {
     reach: f64,
 }
 
-const AXES: [Part; 3] = [Part::X, Part::Y, Part::Z];
+/// The components of a view.
+pub(super) const AXES: [Part; 3] = [Part::X, Part::Y, Part::Z];
 /// A coefficient that small may be zero in truth; leaving it out changes less than is allowed for
 /// rounding.
 const TINY: f64 = 1e-15;
 /// The same for the rotations of links, whose relations allow for 10^-12.
 const TINY_TURN: f64 = 1e-13;
 
-fn is_point(feature: Feature) -> bool {
+/// Whether it is a point, not a direction.
+pub(super) fn is_point(feature: Feature) -> bool {
     matches!(feature, Feature::Origin(_) | Feature::Tip)
 }
 

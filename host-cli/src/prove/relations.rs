@@ -2,15 +2,10 @@
 
 use super::geometry::Joint;
 use super::interval::Interval;
-use super::network::{Constraint, Network, Special, Wanted};
+use super::network::{AXES, Constraint, Network, Special, Wanted, is_point};
 use balk_checker::proof::{Feature, Part, Place, Quantity, Relation};
 
-const AXES: [Part; 3] = [Part::X, Part::Y, Part::Z];
 const ZERO: Interval = Interval { lo: 0.0, hi: 0.0 };
-
-fn is_point(feature: Feature) -> bool {
-    matches!(feature, Feature::Origin(_) | Feature::Tip)
-}
 
 impl Joint {
     /// The joint's values over a span of its variable.
